@@ -1,0 +1,1 @@
+"""Reliability assessment of ageing reinforced-concrete structures."""

@@ -1,0 +1,1 @@
+"""What the engineer said: case file, units, survey tables and their checks."""

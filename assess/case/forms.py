@@ -1,0 +1,142 @@
+"""How a kind of evidence, a limit state or an option tells the case format about itself.
+
+The packages that implement them (``updating``, ``reliability``, ``decisions``) stand above
+``case`` and hand their forms down in a `Vocabulary`; the case format never imports them. That
+is what makes a new kind one file and one registry line.
+"""
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import BaseModel, ConfigDict, ValidationInfo, model_validator
+
+from assess.errors import Fault
+
+FloatArray = NDArray[np.float64]
+BoolArray = NDArray[np.bool_]
+TextArray = NDArray[np.str_]
+
+
+class Closed(BaseModel):
+    """Base of everything a case file may say: frozen and closed to unknown keys."""
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    @model_validator(mode="before")
+    @classmethod
+    def _note_model(cls, data: Any, info: ValidationInfo) -> Any:
+        """Leave a note of which model a mapping was read as: faults name its known keys."""
+        if isinstance(info.context, dict):
+            info.context.setdefault(id(data), cls)
+        return data
+
+
+class EvidenceEntry(Closed):
+    """What a survey says of one table, beside what the kind adds."""
+
+    table: Path  # relative to the case file
+    zone: str | None = None  # of every row, unless the table has a `zone` column
+
+
+class SectionEntry(Closed):
+    """What is said of one section, beside what its limit state adds."""
+
+    name: str
+    zone: str
+    limit_state: str
+
+
+class OptionEntry(Closed):
+    """What is said of one option, beside what its kind adds."""
+
+    name: str
+    kind: str
+
+
+@dataclass(frozen=True, slots=True)
+class Column:
+    """One column of a survey table. Header in the file: ``name [unit]``."""
+
+    name: str
+    what: str  # one line, for faults and the manual
+    unit: str | None = None  # unit inside the tool; None for text
+    required: bool = True
+    above: float | None = None  # allowed: value > above
+    below: float | None = None  # allowed: value < below
+    usual: tuple[float, float] | None = None  # outside: a doubt (another unit?)
+    choices: tuple[str, ...] = ()  # for text columns
+    censored: bool = False  # may say ">80": at least that much
+    absent: tuple[str, ...] = ()  # words that mean "looked for, none found"
+
+
+@dataclass(frozen=True, slots=True)
+class Table:
+    """A survey table after reading: internal units, one row per measurement.
+
+    ``numbers[name]`` is NaN where the cell was censored, absent or (optional columns) empty.
+    """
+
+    path: Path
+    lines: NDArray[np.int64]  # line (CSV) or row (XLSX) of each measurement, 1-based
+    numbers: Mapping[str, FloatArray]
+    texts: Mapping[str, TextArray]  # "" where empty
+    beyond: Mapping[str, FloatArray] = field(default_factory=dict)  # the 80 of ">80", else NaN
+    absent: Mapping[str, BoolArray] = field(default_factory=dict)  # True at "none found"
+
+    def __len__(self) -> int:
+        """Count the measurements."""
+        return len(self.lines)
+
+
+Doubter = Callable[[EvidenceEntry, Table], Sequence[Fault]]
+
+
+def no_doubts(_entry: EvidenceEntry, _table: Table) -> Sequence[Fault]:
+    """Have nothing to doubt beyond what the columns say."""
+    return ()
+
+
+@dataclass(frozen=True, slots=True)
+class EvidenceForm:
+    """A kind of evidence as the case format sees it."""
+
+    key: str  # under a survey: "cores", "cover", "section_loss"
+    title: str
+    entry: type[EvidenceEntry]
+    columns: tuple[Column, ...]  # beside the common `location`, `zone`, `section`, `note`
+    value: str  # name of the column that outlier and duplicate checks look at
+    log_scale: bool = False  # outliers are judged on the logarithm
+    doubts: Doubter = no_doubts
+
+
+@dataclass(frozen=True, slots=True)
+class LimitStateForm:
+    """A limit state as the case format sees it."""
+
+    key: str  # "bending"
+    title: str
+    entry: type[SectionEntry]  # its `limit_state` is Literal[key]
+
+
+@dataclass(frozen=True, slots=True)
+class OptionForm:
+    """A kind of option as the case format sees it."""
+
+    key: str  # "arrest corrosion"
+    title: str
+    entry: type[OptionEntry]  # its `kind` is Literal[key]
+
+
+@dataclass(frozen=True, slots=True)
+class Vocabulary:
+    """All kinds that a case file may name."""
+
+    evidence: Mapping[str, EvidenceForm]
+    limit_states: Mapping[str, LimitStateForm]
+    options: Mapping[str, OptionForm]
+    targets: Mapping[str, Sequence[str]]  # target set -> its classes
+    concrete_grades: Sequence[str]  # grades with a published strength prior

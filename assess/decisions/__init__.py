@@ -1,0 +1,1 @@
+"""Targets, verdicts and options."""

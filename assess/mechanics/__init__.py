@@ -1,0 +1,1 @@
+"""Published formulas of resistance, deterioration and loads: numbers in, numbers out."""

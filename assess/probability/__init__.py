@@ -1,0 +1,1 @@
+"""Marginals, dependence, standard normal space; knows nothing of structures."""

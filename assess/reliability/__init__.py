@@ -1,0 +1,1 @@
+"""Joint draws and limit states to failure probabilities and indices."""

@@ -1,0 +1,232 @@
+"""Limit state: bending of a reinforced-concrete section with corroding bars."""
+
+from collections.abc import Mapping
+from typing import Annotated, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import Field
+from scipy import special
+
+from assess.case.forms import Closed, LimitStateForm, SectionEntry
+from assess.case.quantities import CoefficientOfVariation, InUnit, Length, PositiveNumber
+from assess.case.spec import CaseSpec
+from assess.mechanics.bending import bending_resistance
+from assess.mechanics.corrosion import (
+    penetration_depth,
+    pit_depth,
+    pitting_factor_distribution,
+    residual_area_pit,
+    residual_area_uniform,
+)
+from assess.mechanics.dimensions import dimension_deviation, effective_depth
+from assess.mechanics.model_uncertainty import model_uncertainty
+from assess.reliability.limit_state import AnnualMaximum, LimitState, Surroundings
+from assess.reliability.loads import Loads, permanent_effect
+
+FloatArray = NDArray[np.float64]
+
+RESISTANCE_MODEL = "concrete: bending"
+LOAD_EFFECT_MODEL = "load effect: moments in frames"
+MOST_PITS = 6  # pitting factors sampled per section; more bars share them in groups
+
+
+class Factor(Closed):
+    """A lognormal model factor."""
+
+    mean: PositiveNumber = Field(description="mean of the factor [-]")
+    V: CoefficientOfVariation = Field(description="coefficient of variation of the factor")
+    source: str = Field(description="where mean and V come from")
+
+
+class Flange(Closed):
+    """Compression flange of a T section."""
+
+    width: Length = Field(description="effective width of the flange")
+    thickness: Length = Field(description="thickness of the flange")
+
+
+class Bars(Closed):
+    """Tension bars, in one layer."""
+
+    count: Annotated[int, Field(ge=1, le=200, description="number of bars")]
+    diameter: Length = Field(description="diameter of the sound bars")
+    steel: str = Field(description="name under `steel`")
+    pit_length: Length = Field(
+        1000.0,
+        description="length of bar over which the deepest pit governs. "
+        "Engineering judgement, no source.",
+    )
+
+
+class BendingSection(SectionEntry):
+    """A section checked in bending."""
+
+    limit_state: Literal["bending"]
+    depth: Length = Field(description="overall depth")
+    depth_sd: Annotated[float, InUnit("mm", "a standard deviation", at_least=0.0)] | None = Field(
+        None, description="standard deviation of the depth; left out: JCSS part 3.10 by the depth"
+    )
+    width: Length = Field(description="width of the web")
+    flange: Flange | None = None
+    link_diameter: Annotated[float, InUnit("mm", "a diameter", at_least=0.0)] = Field(
+        description="diameter of the links, 0 where cover is that of the main bars"
+    )
+    bars: Bars
+    loads: Loads
+    resistance_model: Factor | None = Field(
+        None, description="factor on the resistance; left out: JCSS part 3.9, concrete bending"
+    )
+    load_effect_model: Factor | None = Field(
+        None, description="factor on all load effects; left out: JCSS part 3.9, moments in frames"
+    )
+
+
+def _factor(stated: Factor | None, name: str) -> Factor:
+    """Take the stated model factor, else the published one."""
+    if stated is not None:
+        return stated
+    published = model_uncertainty(name)
+    return Factor(mean=published.mean, V=published.variation, source=published.source)
+
+
+def _lognormal(factor: Factor, z: FloatArray) -> FloatArray:
+    """Map standard normals to a lognormal factor of given mean and V."""
+    log_variance = np.log1p(factor.V**2)
+    return np.asarray(factor.mean * np.exp(np.sqrt(log_variance) * z - 0.5 * log_variance))
+
+
+def _pit_groups(count: int) -> FloatArray:
+    """Share the bars out into at most `MOST_PITS` groups of equal pitting factor."""
+    groups = min(count, MOST_PITS)
+    return np.array([len(part) for part in np.array_split(np.arange(count), groups)], dtype=float)
+
+
+def _gumbel(location: float, inverse_scale: float, z: FloatArray) -> FloatArray:
+    """Map standard normals to a Gumbel maximum, accurate in both tails."""
+    return np.asarray(location - np.log(-special.log_ndtr(z)) / inverse_scale)
+
+
+class Bending(LimitState):
+    r"""Bending: :math:`\theta_R M_R(y) \ge \theta_E (G + Q)`.
+
+    Notes
+    -----
+    The load capacity is :math:`q = \theta_R M_R / \theta_E - G`. :math:`M_R` follows from the
+    bars' area left at the end of the year; each bar (or group of bars beyond `MOST_PITS`, which
+    errs on the safe side of averaging) has its own pitting factor. Every bar of the section has
+    the section's onset and current.
+    """
+
+    form = LimitStateForm(key="bending", title="Bending resistance", entry=BendingSection)
+
+    def chances(self, entry: BendingSection) -> Mapping[str, str]:
+        """Name the section's own standard normals with their groups."""
+        pits = {f"pitting {k + 1}": "pitting" for k in range(len(_pit_groups(entry.bars.count)))}
+        return {
+            "yield strength": "steel strength",
+            "depth": "cover and depth",
+            "resistance model": "resistance model",
+            "load effect model": "load effect model",
+            "permanent load": "permanent load",
+            **pits,
+        }
+
+    def steels(self, entry: BendingSection) -> tuple[str, ...]:
+        """Name the reinforcement of the section."""
+        return (entry.bars.steel,)
+
+    def load_capacity(
+        self, entry: BendingSection, spec: CaseSpec, here: Surroundings
+    ) -> FloatArray:
+        """Variable moment that uses the section up, (n, k, n_year). [N·mm]"""
+        steel = spec.steel[entry.bars.steel]
+        yield_strength = (
+            here.common[f"steel.{entry.bars.steel}"]
+            + steel.local_sd * here.chance["yield strength"]
+        )
+        if entry.depth_sd is None:
+            deviation = dimension_deviation(entry.depth)
+            depth = entry.depth + deviation.mean + deviation.sd * here.chance["depth"]
+        else:
+            depth = entry.depth + entry.depth_sd * here.chance["depth"]
+        lever = effective_depth(
+            depth, np.maximum(here.local["cover"], 0.0), entry.link_diameter, entry.bars.diameter
+        )
+        resistance = bending_resistance(
+            self._steel_area(entry, spec, here),
+            np.maximum(yield_strength, 0.0),
+            here.local["strength"],
+            lever,
+            entry.width,
+            None if entry.flange is None else entry.flange.width,
+            None if entry.flange is None else entry.flange.thickness,
+        )
+        resistance_model = _factor(entry.resistance_model, RESISTANCE_MODEL)
+        effect_model = _factor(entry.load_effect_model, LOAD_EFFECT_MODEL)
+        ratio = _lognormal(resistance_model, here.chance["resistance model"]) / _lognormal(
+            effect_model, here.chance["load effect model"]
+        )
+        mean, sd = permanent_effect(entry.loads)
+        permanent = mean + sd * here.chance["permanent load"]
+        return ratio * resistance - permanent
+
+    def _steel_area(
+        self, entry: BendingSection, spec: CaseSpec, here: Surroundings
+    ) -> FloatArray | float:
+        """Area of all bars at the end of each year. [mm²]"""
+        diameter = entry.bars.diameter
+        if not here.corrodes:
+            return entry.bars.count * np.pi * diameter**2 / 4.0
+        corrosion = spec.zones[entry.zone].corrosion
+        penetration = penetration_depth(here.local["current"], here.corroding())
+        if corrosion is None or corrosion.attack == "uniform":
+            return np.asarray(
+                entry.bars.count * residual_area_uniform(diameter, penetration), dtype=np.float64
+            )
+        location, inverse_scale = pitting_factor_distribution(diameter, entry.bars.pit_length)
+        area: FloatArray | float = 0.0
+        for k, bars in enumerate(_pit_groups(entry.bars.count)):
+            factor = _gumbel(float(location), float(inverse_scale), here.chance[f"pitting {k + 1}"])
+            area = area + bars * residual_area_pit(
+                diameter, pit_depth(penetration, np.maximum(factor, 1.0))
+            )
+        return area
+
+    def annual_maximum(
+        self, entry: BendingSection, spec: CaseSpec, years: FloatArray
+    ) -> AnnualMaximum:
+        """Largest variable moment of each year. [N·mm]"""
+        return entry.loads.variable.annual_maximum.in_years(years, spec.structure.assessed)
+
+    def assumptions(self, entry: BendingSection, spec: CaseSpec) -> tuple[str, ...]:
+        """Say what the check assumes."""
+        resistance = _factor(entry.resistance_model, RESISTANCE_MODEL)
+        effect = _factor(entry.load_effect_model, LOAD_EFFECT_MODEL)
+        said = [
+            "Bending resistance by plane sections with a rectangular stress block of 0.85 times "
+            "the cylinder strength over 0.8 of the compressed depth, crushing at a strain of "
+            "0.0035 (EN 1992-1-1, 3.1.7); no axial force; bars fully anchored.",
+            f"Resistance model factor lognormal, mean {resistance.mean:g}, V {resistance.V:g} "
+            f"({resistance.source}).",
+            f"Load effect model factor lognormal, mean {effect.mean:g}, V {effect.V:g} "
+            f"({effect.source}).",
+            "The year's largest variable load effect has a Gumbel distribution, years independent "
+            "given the other variables; its parameters are taken as known.",
+            "Resistance counts as that at the end of each year.",
+        ]
+        if entry.depth_sd is None:
+            said.append("Depth deviates from its nominal value as in JCSS part 3.10.")
+        corrosion = spec.zones[entry.zone].corrosion
+        if corrosion is not None:
+            said.append(
+                "All tension bars of a section start to corrode together and at one current; by "
+                "Faraday's law. "
+                + (
+                    "Each bar has its own largest pit (Gumbel factor after Stewart 2004, pit "
+                    "geometry after Val and Melchers 1997)."
+                    if corrosion.attack == "pitting"
+                    else "Loss is uniform around the bar."
+                )
+            )
+        return tuple(said)

@@ -1,0 +1,100 @@
+"""Load effects of a section as the case file states them."""
+
+from typing import Annotated
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import Field, model_validator
+
+from assess.case.forms import Closed
+from assess.case.quantities import CoefficientOfVariation, InUnit, Moment
+from assess.mechanics.loads import (
+    gumbel_from_fractile,
+    gumbel_from_mean,
+    mode_in_year,
+    probability_from_return_period,
+)
+from assess.reliability.limit_state import AnnualMaximum
+from assess.units import NONE, QuantityError
+
+FloatArray = NDArray[np.float64]
+
+
+class PermanentLoad(Closed):
+    """One permanent load effect, normal."""
+
+    name: str = Field(description="such as self weight or surfacing")
+    effect: Moment = Field(description="mean of its effect at the section")
+    V: CoefficientOfVariation = Field(description="coefficient of variation of the effect")
+    source: str = Field("", description="where effect and V come from")
+
+
+class AnnualMaximumEffect(Closed):
+    """Largest effect of one year, Gumbel: by its mean, or by a value of a return period."""
+
+    mean: Moment | None = Field(None, description="mean of the year's largest effect")
+    value: Moment | None = Field(None, description="effect of the return period")
+    return_period: Annotated[float, InUnit("yr", "a return period", above=1.0)] | None = Field(
+        None, description="return period of `value`"
+    )
+    V: CoefficientOfVariation = Field(
+        description="coefficient of variation of the year's largest effect"
+    )
+    growth: Annotated[float, InUnit(NONE, "a yearly growth", above=-0.1, below=0.1)] = Field(
+        0.0, description="yearly growth of the mode, as a fraction of that in the year assessed"
+    )
+
+    @model_validator(mode="after")
+    def _one_way(self) -> "AnnualMaximumEffect":
+        by_value = self.value is not None and self.return_period is not None
+        only_mean = self.value is None and self.return_period is None
+        if (self.mean is not None and not only_mean) or (self.mean is None and not by_value):
+            given = [
+                name
+                for name in ("mean", "value", "return_period")
+                if getattr(self, name) is not None
+            ]
+            raise QuantityError(
+                "a year's largest effect takes one way to be said",
+                " and ".join(given) or "none",
+                "mean with V, or value with return_period and V",
+            )
+        return self
+
+    def gumbel(self) -> tuple[float, float]:
+        """Mode and scale in the year of assessment."""
+        if self.mean is not None:
+            mode, scale = gumbel_from_mean(self.mean, self.V)
+        else:
+            probability = probability_from_return_period(self.return_period or np.nan)
+            mode, scale = gumbel_from_fractile(self.value or np.nan, probability, self.V)
+        return float(mode), float(scale)
+
+    def in_years(self, years: FloatArray, assessed: int) -> AnnualMaximum:
+        """Distribution in each calendar year."""
+        mode, scale = self.gumbel()
+        return AnnualMaximum(
+            mode_in_year(mode, years, float(assessed), self.growth), np.full(len(years), scale)
+        )
+
+
+class VariableLoad(Closed):
+    """The variable load that rules the section."""
+
+    name: str = Field("variable load", description="such as traffic")
+    annual_maximum: AnnualMaximumEffect
+    source: str = Field("", description="where the load effect comes from")
+
+
+class Loads(Closed):
+    """Load effects at a section."""
+
+    permanent: tuple[PermanentLoad, ...] = Field((), description="permanent load effects")
+    variable: VariableLoad
+
+
+def permanent_effect(loads: Loads) -> tuple[float, float]:
+    """Mean and standard deviation of the sum of independent normal permanent effects."""
+    mean = sum(load.effect for load in loads.permanent)
+    variance = sum((load.effect * load.V) ** 2 for load in loads.permanent)
+    return float(mean), float(np.sqrt(variance))

@@ -1,0 +1,213 @@
+"""From draws and a section of the case to the integral's problem."""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.case.forms import SectionEntry
+from assess.case.reader import Case
+from assess.case.spec import CaseSpec
+from assess.reliability.importance import IntArray, Problem
+from assess.reliability.limit_state import Action, LimitState, Surroundings
+from assess.reliability.limit_states import LIMIT_STATES
+from assess.updating.kinds import KINDS
+from assess.updating.local import Local
+from assess.updating.model import Spec
+
+FloatArray = NDArray[np.float64]
+
+# Local variables that are normal on the logarithm.
+LOGARITHMIC = frozenset({"strength", "onset", "current"})
+# The group, in words, that a local variable counts to in the sensitivities.
+GROUPS = {
+    "strength": "concrete strength",
+    "cover": "cover and depth",
+    "onset": "onset of corrosion",
+    "current": "corrosion rate",
+}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class SectionState:
+    """One section in one state of knowledge: what is left to chance, given each draw."""
+
+    entry: SectionEntry
+    locals: Mapping[str, Local]
+    common: Mapping[str, FloatArray]  # common variables of the section, each (n_draw,)
+    measured: frozenset[str]  # local variables that a survey measured at the section itself
+
+
+def common_names(spec: CaseSpec, entry: SectionEntry) -> tuple[str, ...]:
+    """Name the common variables that a section's limit state uses."""
+    state = LIMIT_STATES[entry.limit_state]
+    zone = spec.zones[entry.zone]
+    return (
+        *(f"{entry.zone}.{name}" for name in zone.variables()),
+        *(f"steel.{name}" for name in state.steels(entry)),
+    )
+
+
+def section_state(
+    case: Case,
+    spec: Spec,
+    entry: SectionEntry,
+    stage: int,
+    values: Mapping[str, FloatArray],
+    seed: int,
+) -> SectionState:
+    """Condition a section's local variables on what was measured there.
+
+    Parameters
+    ----------
+    case, spec : Case, Spec
+        The case and its measurements.
+    entry : SectionEntry
+        The section.
+    stage : int
+        Number of surveys that count.
+    values : mapping of str to ndarray (n_draw,)
+        Draws of all common variables.
+    seed : int
+        Of what must be drawn (the onset at a measured place).
+
+    Returns
+    -------
+    SectionState
+        With local variables in a fixed order.
+    """
+    position = list(case.spec.sections()).index(entry.name)
+    found: dict[str, Local] = {}
+    measured: set[str] = set()
+    for number, (key, kind) in enumerate(KINDS.items()):
+        rows = spec.rows.get(key)
+        rng = np.random.default_rng([seed, stage, position, number])
+        here = kind.local(rows, stage, entry.name, entry.zone, values, rng)
+        found |= here
+        place = None if rows is None else rows.place_of(entry.name)
+        if (
+            rows is not None
+            and place is not None
+            and rows.stage[rows.place == place].min() <= stage
+        ):
+            measured |= set(here)
+    names = common_names(case.spec, entry)
+    return SectionState(entry, found, {name: values[name] for name in names}, frozenset(measured))
+
+
+def without_dependence(state: SectionState, case: Case, spec: Spec, seed: int) -> SectionState:
+    """Permute every common variable, and every measured local one, on its own.
+
+    The marginals stay what they are; the dependence between them goes. Used only to show what
+    ignoring the dependence would do.
+
+    Parameters
+    ----------
+    state : SectionState
+        With dependence.
+    case, spec : Case, Spec
+        The case and its measurements.
+    seed : int
+        Of the permutations.
+
+    Returns
+    -------
+    SectionState
+        With the same marginals.
+    """
+    rng = np.random.default_rng([seed, 99])
+    common = {name: rng.permutation(draws) for name, draws in state.common.items()}
+    shuffled: dict[str, Local] = {}
+    for kind in KINDS.values():
+        # Without measurements of its own the section follows its (permuted) zone.
+        shuffled |= kind.local(None, 0, state.entry.name, state.entry.zone, common, rng)
+    count = len(next(iter(common.values())))
+    for name in state.measured:
+        shuffled[name] = state.locals[name].take(rng.permutation(count))
+    return SectionState(state.entry, shuffled, common, state.measured)
+
+
+def dimensions(state: SectionState) -> dict[str, str]:
+    """Name the standard normals of a section in order, each with its group in words."""
+    limit_state = LIMIT_STATES[state.entry.limit_state]
+    return {
+        **{name: GROUPS.get(name, name) for name in state.locals},
+        **limit_state.chances(state.entry),
+    }
+
+
+def ages(case: Case) -> FloatArray:
+    """Age of the structure at the end of each year of the horizon, (n_year,) [yr]."""
+    structure = case.spec.structure
+    built = structure.built.year + (structure.built.timetuple().tm_yday - 1) / 365.25
+    return np.asarray(structure.assessed + 1.0 + np.arange(structure.horizon) - built)
+
+
+def calendar_years(case: Case) -> NDArray[np.int64]:
+    """Calendar years of the horizon, the year of assessment first."""
+    return case.spec.structure.assessed + np.arange(case.spec.structure.horizon)
+
+
+def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
+    """Put a section under an option as the integral sees it.
+
+    Parameters
+    ----------
+    case : Case
+        The case.
+    state : SectionState
+        The section in one state of knowledge.
+    action : Action
+        What the option does to it.
+
+    Returns
+    -------
+    Problem
+        Its hazard is minus the log-probability that the year's largest effect stays below the
+        load capacity; for a Gumbel maximum of mode u and scale b its logarithm is
+        ``-(q - u) / b``.
+    """
+    limit_state: LimitState = LIMIT_STATES[state.entry.limit_state]
+    names = list(dimensions(state))
+    local_names = list(state.locals)
+    age = ages(case)
+    maximum = limit_state.annual_maximum(
+        state.entry, case.spec, calendar_years(case).astype(np.float64)
+    )
+    factor = np.broadcast_to(np.asarray(action.load_factor, dtype=np.float64), age.shape)
+    mode, scale = maximum.mode * factor, maximum.scale * factor
+
+    def log_hazard(z: FloatArray, draws: IntArray, years: IntArray) -> FloatArray:
+        capacity = limit_state.load_capacity(
+            state.entry,
+            case.spec,
+            _surroundings(state, local_names, names, z, draws, age[years], action),
+        )
+        return np.asarray((mode[years] - capacity) / scale[years])
+
+    return Problem(log_hazard, len(names), len(next(iter(state.common.values()))), len(age))
+
+
+def _surroundings(
+    state: SectionState,
+    local_names: Sequence[str],
+    names: Sequence[str],
+    z: FloatArray,
+    draws: IntArray,
+    age: FloatArray,
+    action: Action,
+) -> Surroundings:
+    """Give local and common values for chosen draws and points."""
+    local: dict[str, Any] = {}
+    for i, name in enumerate(local_names):
+        value = state.locals[name].value(z[..., i, None], draws)
+        local[name] = np.exp(value) if name in LOGARITHMIC else value
+    return Surroundings(
+        local=local,
+        common={name: value[draws][:, None, None] for name, value in state.common.items()},
+        chance={name: z[..., i, None] for i, name in enumerate(names) if i >= len(local_names)},
+        age=age,
+        action=action,
+    )

@@ -1,0 +1,1 @@
+"""Figures, the document tree and its writers."""

@@ -1,0 +1,1 @@
+"""The parts of the report, each a function from a run record to document nodes."""

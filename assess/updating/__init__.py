@@ -1,0 +1,1 @@
+"""Prior and evidence to a PyMC model to joint draws."""

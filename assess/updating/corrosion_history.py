@@ -1,0 +1,320 @@
+"""Onset and rate of corrosion at a place, given what break-outs there found.
+
+The local onset is integrated out by a fixed quadrature over the years that the bar may have been
+corroding; given the onset, the local rate is lognormal and integrates in closed form.
+"""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, fields
+from typing import Any, NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy import special
+
+from assess import operations as op
+from assess.mechanics.corrosion import penetration_depth
+from assess.updating import nested
+from assess.updating.kind import FloatArray, Numeric, Rows
+from assess.updating.local import Local
+
+NODES = 48  # Gauss-Legendre; tests compare with adaptive quadrature
+OFF = 1e3  # stands for no bound on ln rate
+LEAST_AGE = 1e-12  # [yr] keeps logarithms finite; at it nothing has corroded
+LEAST = 1e-290  # keeps the logarithm of a likelihood finite
+GRID = 257  # points of the tabulated distribution of a measured place's onset
+
+
+class Population(NamedTuple):
+    """Zone parameters of onset [ln yr] and rate of loss of radius [ln mm/yr]; broadcast."""
+
+    log_onset: Numeric
+    onset_scatter: Numeric
+    log_rate: Numeric
+    rate_scatter: Numeric
+
+
+def population(
+    onset: Numeric, onset_scatter: Numeric, current: Numeric, current_scatter: Numeric
+) -> Population:
+    """Build the population from a zone's common variables (onset [yr], current [µA/cm²])."""
+    return Population(
+        op.log(onset), onset_scatter, op.log(penetration_depth(current, 1.0)), current_scatter
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Places:
+    """What was found at each place, padded to the largest number of visits.
+
+    ``log_last`` (n_place,) is ln of the age up to which the onset matters: the first visit that
+    found loss, else the last visit. ``log_onset``, ``log_weight`` (n_place, n_node) and
+    ``log_years`` (n_place, n_visit, n_node) tabulate the quadrature over the onset: ln onset,
+    ln weight [ln yr], ln of the years corroded at each visit. The others have shape (n_place,
+    n_visit); ``found`` and ``none`` are 1 where a visit found loss or found none, 0 at padding
+    and for later surveys.
+    """
+
+    log_last: Any
+    log_onset: Any
+    log_weight: Any
+    log_years: Any
+    age: Any  # of the structure at the visit [yr]
+    found: Any
+    none: Any
+    log_loss: Any  # ln of measured loss of radius [ln mm], 0 where none
+    precision: Any  # one over the variance of log_loss, 0 where none
+    limit: Any  # ln of the detection limit [ln mm]
+    visits: int  # length of the last axis
+
+    def data(self) -> dict[str, NDArray[Any]]:
+        """Arrays by the names under which the sampler holds them."""
+        return {f"loss_{name}": getattr(self, name) for name in _ARRAYS}
+
+    @staticmethod
+    def from_data(data: Mapping[str, Numeric], visits: int) -> "Places":
+        """Take the arrays back, as numbers or as graph variables."""
+        return Places(**{name: data[f"loss_{name}"] for name in _ARRAYS}, visits=visits)
+
+    def one(self, place: int) -> "Places":
+        """Pick one place, keeping the axis."""
+        arrays = {name: getattr(self, name)[place : place + 1] for name in _ARRAYS}
+        return Places(**arrays, visits=self.visits)
+
+    @property
+    def anything_known(self) -> bool:
+        """Whether any visit counts at this stage."""
+        return bool(np.any(self.found > 0) or np.any(self.none > 0))
+
+
+_ARRAYS = tuple(field.name for field in fields(Places) if field.name != "visits")
+
+
+def count_visits(rows: Rows) -> int:
+    """Largest number of rows at one place."""
+    return int(np.bincount(rows.place).max())
+
+
+def places(rows: Rows, stage: int) -> Places:
+    """Arrange break-outs by place, with later surveys switched off."""
+    visit = np.zeros(len(rows.place), dtype=np.int64)
+    seen = np.zeros(len(rows.places), dtype=np.int64)
+    for row, place in enumerate(rows.place):
+        visit[row] = seen[place]
+        seen[place] += 1
+    shape = (len(rows.places), count_visits(rows))
+
+    def padded(values: NDArray[Any], fill: float = 0.0) -> FloatArray:
+        array = np.full(shape, fill)
+        array[rows.place, visit] = values
+        return array
+
+    active = rows.stage <= stage
+    loss = np.isfinite(rows.value)
+    found = padded(np.where(active & loss, 1.0, 0.0))
+    none = padded(np.where(active & ~loss, 1.0, 0.0))
+    age = padded(rows.extra["age"], fill=1.0)
+    first_found = np.where(found > 0, age, np.inf).min(axis=1)
+    last_none = np.where(none > 0, age, 1.0).max(axis=1)
+    last = np.where(np.isfinite(first_found), first_found, last_none)
+    node, weight = np.polynomial.legendre.leggauss(NODES)
+    w, omega = 0.5 * (node + 1.0), 0.5 * weight
+    onset = last[:, None] * (1.0 - w * w)
+    return Places(
+        log_last=np.log(last),
+        log_onset=np.log(onset),
+        log_weight=np.log(2.0 * last[:, None] * (w * omega)),
+        log_years=_log_years(age[:, :, None], onset[:, None, :]),
+        age=age,
+        found=found,
+        none=none,
+        log_loss=padded(np.where(active & loss, np.nan_to_num(rows.value), 0.0)),
+        precision=padded(np.where(active & loss, rows.extra["precision"], 0.0)),
+        limit=padded(rows.extra["limit"]),
+        visits=shape[1],
+    )
+
+
+def _log_years(age: FloatArray, onset: FloatArray) -> FloatArray:
+    """Give ln of the years corroded at an age; far below any rate's reach before the onset."""
+    return np.log(np.maximum(age - onset, LEAST_AGE))
+
+
+def healed_places(rows: Rows) -> list[str]:
+    """Name the places where a later visit found no loss after an earlier one had found some."""
+    loss = np.isfinite(rows.value)
+    healed = []
+    for place, name in enumerate(rows.places):
+        here = rows.place == place
+        first_found = np.min(rows.extra["age"][here & loss], initial=np.inf)
+        if np.any(rows.extra["age"][here & ~loss] > first_found):
+            healed.append(name)
+    return healed
+
+
+class _Rate(NamedTuple):
+    """Distribution of ln rate given the onset, and how likely the findings are."""
+
+    log_density: Numeric  # of the losses measured
+    window: Numeric  # probability that loss was found, and not found, when it was
+    mean: Numeric
+    sd: Numeric
+    lower: Numeric  # standard units
+    upper: Numeric
+
+
+def _rate_given_onset(seen: Places, zone: Population, log_age: Sequence[Numeric]) -> _Rate:
+    """Weigh the findings for given onsets.
+
+    ``log_age`` holds, visit by visit, ln of the years corroded by then; it and the results have
+    shape (n_place or n_draw, n_onset).
+    """
+    precision: Numeric = 0.0
+    weighted: Numeric = 0.0
+    square: Numeric = 0.0
+    lower: Numeric = -OFF
+    upper: Numeric = OFF
+    for k, log_years in enumerate(log_age):
+        residual = seen.log_loss[:, k, None] - log_years - zone.log_rate
+        precision = precision + seen.precision[:, k, None]
+        weighted = weighted + seen.precision[:, k, None] * residual
+        square = square + seen.precision[:, k, None] * residual * residual
+        # A visit that found loss bounds the rate from below, one that found none from above;
+        # what a visit does not bound is shifted out of reach.
+        idle_found = OFF * (1.0 - seen.found[:, k, None])
+        idle_none = OFF * (1.0 - seen.none[:, k, None])
+        lower = op.maximum(lower, seen.limit[:, k, None] - idle_found - log_years)
+        upper = op.minimum(upper, seen.limit[:, k, None] + idle_none - log_years)
+    variance = zone.rate_scatter**2
+    mean, sd = nested.local_posterior(precision, weighted, zone.log_rate, variance)
+    low, high = (lower - mean) / sd, (upper - mean) / sd
+    # Phi(high) - Phi(low), taken in the tail where neither is close to 1.
+    side = op.where(low > 0.0, -1.0, 1.0)
+    window = side * (op.normal_cdf(side * high) - op.normal_cdf(side * low))
+    density = nested.nested_log_likelihood(precision, weighted, square, variance)
+    return _Rate(density, window, mean, sd, low, high)
+
+
+def _log_onset_density(zone: Population, log_onset: Numeric) -> Numeric:
+    """Lognormal log-density of the onset [1/yr]."""
+    score = (log_onset - zone.log_onset) / zone.onset_scatter
+    return op.normal_logpdf(score) - op.log(zone.onset_scatter) - log_onset
+
+
+def log_likelihood(seen: Places, zone: Population) -> Numeric:
+    r"""Log-likelihood of the findings at each place, onset and rate integrated out.
+
+    Parameters
+    ----------
+    seen : Places
+        Findings of n_place places.
+    zone : Population
+        Parameters of shape (n_place, 1), or (1, 1).
+
+    Returns
+    -------
+    numeric, shape (n_place,)
+        Log-likelihood up to terms of measuring precision alone; 0 where nothing is known.
+
+    Notes
+    -----
+    With T the age at the first visit that found loss (else at the last visit)
+
+    .. math:: L = \int_0^T f(t_i)\, P(\text{findings} \mid t_i)\, dt_i
+              + [1 - F(T)]\, 1[\text{no loss found}],
+
+    by Gauss-Legendre quadrature in w, :math:`t_i = T (1 - w^2)`: nodes gather where the bar has
+    corroded for a short time and the logarithm of that time varies fast. Towards
+    :math:`t_i = T` all derivatives of the integrand vanish, so the rule converges fast.
+
+    References
+    ----------
+    .. [1] P. J. Davis, P. Rabinowitz, Methods of Numerical Integration, 2nd ed., 1984, ch. 2.
+    """
+    rate = _rate_given_onset(seen, zone, [seen.log_years[:, k] for k in range(seen.visits)])
+    terms = _log_onset_density(zone, seen.log_onset) + seen.log_weight + rate.log_density
+    found = seen.found.max(axis=1)
+    known = op.maximum(found, seen.none.max(axis=1))
+    later = op.normal_cdf((zone.log_onset - seen.log_last[:, None]) / zone.onset_scatter)[:, 0]
+    peak = op.maximum(terms.max(axis=1), -500.0)
+    within = (op.exp(terms - peak[:, None]) * rate.window).sum(axis=1)
+    total = within + (1.0 - found) * later * op.exp(-peak)
+    return op.where(known > 0.0, peak + op.log(op.maximum(total, LEAST)), 0.0)
+
+
+def local_posterior(
+    seen: Places, zone: Population, rng: np.random.Generator
+) -> tuple[Local, Local]:
+    """Draw the onset of one measured place for each draw; give its rate given that onset.
+
+    Parameters
+    ----------
+    seen : Places
+        One place.
+    zone : Population
+        Arrays of shape (n_draw,).
+    rng : Generator
+        Source of the draws.
+
+    Returns
+    -------
+    tuple of Local
+        ln onset [ln yr], known per draw, and ln rate [ln mm/yr], truncated normal given it.
+        The pair is a draw from the joint posterior of the place, exact but for tabulating the
+        onset at `GRID` points.
+    """
+    column = Population(*(np.asarray(part)[:, None] for part in zone))
+    last = float(np.exp(seen.log_last[0]))
+    w = np.linspace(0.0, 1.0, GRID)[1:-1]
+    onset = last * (1.0 - w * w)
+    seen_then = _rate_given_onset(seen, column, _years_at_visits(seen, onset[None, :]))
+    with np.errstate(divide="ignore"):  # an impossible onset has no density
+        log_density = (
+            _log_onset_density(column, np.log(onset))
+            + np.log(2.0 * last * w)
+            + seen_then.log_density
+            + np.log(seen_then.window)
+        )
+    beyond = np.asarray((column.log_onset - np.log(last)) / column.onset_scatter)[:, 0]
+    log_later = np.where(seen.found.max() > 0.0, -np.inf, special.log_ndtr(beyond))
+    drawn = _draw_tabulated(w, log_density, log_later, rng)
+    later = np.isnan(drawn)
+    log_onset = np.log(last * (1.0 - np.where(later, 0.5, drawn) ** 2))
+    tail = special.ndtri(special.ndtr(beyond) * rng.uniform(size=len(beyond)))
+    log_onset = np.where(later, zone.log_onset - zone.onset_scatter * tail, log_onset)
+    rate = _rate_given_onset(seen, column, _years_at_visits(seen, np.exp(log_onset)[:, None]))
+    bounds = [np.broadcast_to(part[:, 0], log_onset.shape) for part in (rate.lower, rate.upper)]
+    return (
+        Local(log_onset, np.zeros_like(log_onset)),
+        Local(
+            np.broadcast_to(rate.mean[:, 0], log_onset.shape),
+            np.broadcast_to(rate.sd[:, 0], log_onset.shape),
+            *bounds,
+        ),
+    )
+
+
+def _years_at_visits(seen: Places, onset: FloatArray) -> list[FloatArray]:
+    """Give ln of the years corroded by each visit to one place, visit by visit."""
+    return [_log_years(seen.age[:, k, None], onset) for k in range(seen.visits)]
+
+
+def _draw_tabulated(
+    grid: FloatArray, log_density: FloatArray, log_later: FloatArray, rng: np.random.Generator
+) -> FloatArray:
+    """Draw one point per row from tabulated densities; NaN stands for the mass beyond.
+
+    The distribution function is that of the trapezoidal rule, inverted linearly between points.
+    """
+    peak = np.maximum(log_density.max(axis=1), log_later)
+    density = np.exp(log_density - peak[:, None])
+    step = np.diff(grid)
+    cells = 0.5 * (density[:, 1:] + density[:, :-1]) * step
+    cumulative = np.cumsum(cells, axis=1)
+    wanted = rng.uniform(size=len(peak)) * (cumulative[:, -1] + np.exp(log_later - peak))
+    cell = np.minimum((cumulative < wanted[:, None]).sum(axis=1), len(step) - 1)
+    row = np.arange(len(peak))
+    before = cumulative[row, cell] - cells[row, cell]
+    share = (wanted - before) / np.maximum(cells[row, cell], 1e-300)
+    point = grid[cell] + np.clip(share, 0.0, 1.0) * step[cell]
+    return np.where(wanted > cumulative[:, -1], np.nan, point)

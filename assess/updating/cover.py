@@ -1,0 +1,333 @@
+"""Evidence: concrete cover read with a meter."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from typing import Annotated, Any, cast
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import Field
+
+from assess import operations as op
+from assess.case.forms import Closed, Column, EvidenceEntry, EvidenceForm
+from assess.case.quantities import InUnit, Length
+from assess.case.reader import Case
+from assess.probability.marginals import make_marginal
+from assess.updating.kind import (
+    EvidenceKind,
+    FloatArray,
+    IntArray,
+    Numeric,
+    Rows,
+    build_rows,
+    gather,
+    membership,
+    population_local,
+    zone_values,
+)
+from assess.updating.local import Local
+from assess.updating.nested import local_posterior, nested_log_likelihood
+from assess.updating.variables import Variable
+
+
+class Meter(Closed):
+    """A cover meter as its calibration describes it."""
+
+    name: str = Field(description="Readings of one name share one bias.")
+    bias: Annotated[float, InUnit("mm", "a bias", at_least=0.0)] = Field(
+        description="Standard deviation of its unknown constant bias, 0 for none. [mm]"
+    )
+    scatter: Length = Field(description="Standard deviation of one reading. [mm]")
+    source: str = Field("", description="Calibration record or standard.")
+
+
+class CoverEntry(EvidenceEntry):
+    """What a survey says of its cover readings."""
+
+    meter: Meter
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Groups:
+    """Readings that need nothing but their sufficient statistics, by survey, zone and meter."""
+
+    key: NDArray[np.int64]  # (n_group, 3): stage, zone, meter
+    of_row: IntArray  # group of each row
+
+
+class Cover(EvidenceKind):
+    r"""Cover: reading = local cover + meter bias + reading error.
+
+    Notes
+    -----
+    Local covers of a zone are :math:`N(m, s^2)`, a meter's bias is :math:`N(0, b^2)`, common to
+    all of its readings, its reading error :math:`N(0, e^2)` with stated e. Rows on their own
+    are independent given (m, s, bias), so a group of n of them enters through n, mean and sum
+    of squares alone; rows of one section or location share its cover, integrated out
+    (`nested_log_likelihood`). A reading ">80" says that the meter would have read more than 80:
+    it enters with the upper tail probability, as a place of its own.
+    """
+
+    form = EvidenceForm(
+        key="cover",
+        title="Cover readings",
+        entry=CoverEntry,
+        columns=(
+            Column(
+                "cover",
+                "cover to the outermost bar, as read",
+                "mm",
+                above=0.0,
+                below=400.0,
+                usual=(3.0, 150.0),
+                censored=True,
+            ),
+        ),
+        value="cover",
+    )
+    unit = "mm"
+    log_scale = False
+    carrier = "cover_mean"
+
+    def rows(self, case: Case) -> Rows | None:
+        """Gather the readings of all surveys."""
+        items = gather(case, self.form.key)
+        if not items:
+            return None
+        meters = self._meters(case)
+        names = list(meters)
+        value = [item.table.numbers["cover"] for _, item in items]
+        entries = [cast(CoverEntry, item.entry) for _, item in items]
+        counts = [len(v) for v in value]
+        return build_rows(
+            items,
+            value,
+            {
+                "beyond": [item.table.beyond["cover"] for _, item in items],
+                "meter": [
+                    np.full(n, float(names.index(entry.meter.name)))
+                    for n, entry in zip(counts, entries, strict=True)
+                ],
+                "variance": [
+                    np.full(n, entry.meter.scatter**2)
+                    for n, entry in zip(counts, entries, strict=True)
+                ],
+            },
+        )
+
+    def _meters(self, case: Case) -> dict[str, Meter]:
+        """Name the meters of a case in order of first use."""
+        found: dict[str, Meter] = {}
+        for _, item in gather(case, self.form.key):
+            meter = cast(CoverEntry, item.entry).meter
+            found.setdefault(meter.name, meter)
+        return found
+
+    def variables(self, case: Case) -> tuple[Variable, ...]:
+        """Give the bias of each meter that has one."""
+        return tuple(
+            Variable(
+                name=_bias_name(number),
+                label=f"bias of cover meter {meter.name}",
+                symbol="$b_\\mathrm{meter}$",
+                unit="mm",
+                zone="",
+                source=meter.source or "as stated in the case",
+                marginal=make_marginal("normal", parameters={"mean": 0.0, "sd": meter.bias}),
+            )
+            for number, meter in enumerate(self._meters(case).values())
+            if meter.bias > 0.0
+        )
+
+    def data(self, rows: Rows, stage: int) -> dict[str, NDArray[Any]]:
+        """Sufficient statistics of single readings and precisions of shared places."""
+        single = self._single(rows)
+        groups = _groups(rows)
+        active = rows.stage <= stage
+        read = active & single & np.isfinite(rows.value)
+        count = _by_group(groups, read, np.ones_like(rows.value))
+        mean = _by_group(groups, read, rows.value) / np.maximum(count, 1.0)
+        centred = np.where(read, rows.value - mean[groups.of_row], 0.0)
+        square = _by_group(groups, read, centred**2)
+        beyond = active & np.isfinite(rows.extra["beyond"])
+        limits, limit_group = _limits(rows, groups)
+        censored = np.zeros(len(limits))
+        if len(limits):
+            which = _limit_of_row(rows, limits, limit_group, groups)
+            np.add.at(censored, which[beyond], 1.0)
+        shared = active & ~single & np.isfinite(rows.value)
+        chosen = ~single & np.isfinite(rows.value)
+        return {
+            "cover_count": count,
+            "cover_mean": mean,
+            "cover_square": square,
+            "cover_censored": censored,
+            "cover_shared": rows.value[chosen],
+            "cover_shared_precision": np.where(shared, 1.0 / rows.extra["variance"], 0.0)[chosen],
+        }
+
+    def _single(self, rows: Rows) -> NDArray[np.bool_]:
+        """Tell which rows are places of their own."""
+        return np.asarray(
+            np.bincount(rows.place, minlength=len(rows.places))[rows.place] == 1, dtype=np.bool_
+        )
+
+    def log_likelihood(
+        self, rows: Rows, values: Mapping[str, Numeric], data: Mapping[str, Numeric]
+    ) -> Numeric:
+        """Log-likelihood of all active readings, local covers integrated out."""
+        mean = zone_values(rows, values, "cover_mean")
+        variance = zone_values(rows, values, "cover_scatter") ** 2
+        groups = _groups(rows)
+        zone, meter = groups.key[:, 1], groups.key[:, 2]
+        total = variance[..., zone] + _group_variance(rows, groups)
+        centre = mean[..., zone] + _biases(values, meter)
+        single = -0.5 * (
+            data["cover_count"] * (op.log(total) + (data["cover_mean"] - centre) ** 2 / total)
+            + data["cover_square"] / total
+        )
+        result = single.sum()
+        limits, limit_group = _limits(rows, groups)
+        if len(limits):
+            excess = (centre[..., limit_group] - limits) / op.sqrt(total[..., limit_group])
+            result = result + (data["cover_censored"] * op.log_normal_cdf(excess)).sum()
+        chosen = ~self._single(rows) & np.isfinite(rows.value)
+        if chosen.any():
+            zone_of = rows.zone[chosen]
+            residual = (
+                data["cover_shared"]
+                - mean[..., zone_of]
+                - _biases(values, rows.extra["meter"][chosen].astype(np.int64))
+            )
+            weighted = data["cover_shared_precision"] * residual
+            shared, place = np.unique(rows.place[chosen], return_inverse=True)
+            by_place = membership(place.astype(np.int64), len(shared)).T
+            result = (
+                result
+                + nested_log_likelihood(
+                    data["cover_shared_precision"] @ by_place,
+                    weighted @ by_place,
+                    (weighted * residual) @ by_place,
+                    variance[..., rows.place_zone[shared]],
+                ).sum()
+            )
+        return result
+
+    def simulate(
+        self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator
+    ) -> FloatArray:
+        """Draw readings of the same design; beyond the meter's range gives NaN."""
+        mean = zone_values(rows, values, "cover_mean")
+        scatter = zone_values(rows, values, "cover_scatter")
+        draws = len(mean)
+        local = mean[:, rows.place_zone] + scatter[:, rows.place_zone] * rng.standard_normal(
+            (draws, len(rows.places))
+        )
+        bias = _biases(values, rows.extra["meter"].astype(np.int64))
+        error = np.sqrt(rows.extra["variance"]) * rng.standard_normal((draws, len(rows.value)))
+        reading = local[:, rows.place] + bias + error
+        return np.where(reading > _row_limit(rows), np.nan, reading)
+
+    def observed(self, rows: Rows, value: FloatArray) -> Rows:
+        """Put other readings in place of those of the rows; NaN is beyond the meter's range."""
+        beyond = np.where(np.isnan(value), _row_limit(rows), np.nan)
+        return replace(rows, value=value, extra={**rows.extra, "beyond": beyond})
+
+    def local(
+        self,
+        rows: Rows | None,
+        stage: int,
+        section: str,
+        zone: str,
+        values: Mapping[str, FloatArray],
+        _rng: np.random.Generator,
+    ) -> dict[str, Local]:
+        """Cover at a section, given its own readings where there are any."""
+        population = population_local(values, zone, "cover_mean", "cover_scatter", logarithm=False)
+        place = None if rows is None else rows.place_of(section)
+        if rows is None or place is None:
+            return {"cover": population}
+        here = (rows.place == place) & (rows.stage <= stage) & np.isfinite(rows.value)
+        bias = np.broadcast_to(
+            _biases(values, rows.extra["meter"][here].astype(np.int64)),
+            (len(population.mean), int(here.sum())),
+        )
+        precision = 1.0 / rows.extra["variance"][here]
+        residual = rows.value[here] - bias - population.mean[:, None]
+        mean, sd = local_posterior(
+            precision.sum(), residual @ precision, population.mean, population.sd**2
+        )
+        return {"cover": Local(mean, sd)}
+
+
+def _bias_name(meter: int) -> str:
+    return f"cover_meter_{meter + 1}.bias"
+
+
+def _biases(values: Mapping[str, Numeric], meter: IntArray) -> Numeric:
+    """Pick the bias of each meter index, last axis as ``meter``; zero where it has none."""
+    if len(meter) == 0:
+        return 0.0
+    columns = [values.get(_bias_name(k)) for k in range(int(meter.max()) + 1)]
+    known = [column for column in columns if column is not None]
+    if not known:
+        return 0.0
+    return op.stack_last([known[0] * 0.0 if c is None else c for c in columns])[..., meter]
+
+
+def _groups(rows: Rows) -> _Groups:
+    """Group rows by stage, zone and meter."""
+    meter = rows.extra["meter"].astype(np.int64)
+    key, of_row = np.unique(
+        np.column_stack([rows.stage, rows.zone, meter]), axis=0, return_inverse=True
+    )
+    return _Groups(key.astype(np.int64), of_row.reshape(-1).astype(np.int64))
+
+
+def _by_group(groups: _Groups, chosen: NDArray[np.bool_], value: FloatArray) -> FloatArray:
+    """Sum a value over the chosen rows of each group."""
+    return np.bincount(
+        groups.of_row[chosen], weights=value[chosen], minlength=len(groups.key)
+    ).astype(np.float64)
+
+
+def _group_variance(rows: Rows, groups: _Groups) -> FloatArray:
+    """Give the reading variance of each group's meter."""
+    variance = np.zeros(len(groups.key))
+    variance[groups.of_row] = rows.extra["variance"]
+    return variance
+
+
+def _limits(rows: Rows, groups: _Groups) -> tuple[FloatArray, IntArray]:
+    """Distinct censoring limits with their groups."""
+    reach = _row_limit(rows)
+    pairs = np.unique(
+        np.column_stack([groups.of_row, reach])[np.isfinite(reach)].reshape(-1, 2), axis=0
+    )
+    return pairs[:, 1], pairs[:, 0].astype(np.int64)
+
+
+def _limit_of_row(
+    rows: Rows, limits: FloatArray, limit_group: IntArray, groups: _Groups
+) -> IntArray:
+    """Index into the limits for each row that has one; 0 elsewhere."""
+    match = (groups.of_row[:, None] == limit_group) & (_row_limit(rows)[:, None] == limits)
+    return np.asarray(match.argmax(axis=1), dtype=np.int64)
+
+
+def _row_limit(rows: Rows) -> FloatArray:
+    """Limit at which each row is, or would be, censored; inf if none."""
+    beyond = rows.extra["beyond"]
+    return np.where(np.isfinite(beyond), beyond, _range(rows))
+
+
+def _range(rows: Rows) -> FloatArray:
+    """Largest readable cover of each row: the least limit that its meter shows; inf if none."""
+    reach = np.full(len(rows.value), np.inf)
+    meter = rows.extra["meter"]
+    for m in np.unique(meter):
+        mine = meter == m
+        beyond = rows.extra["beyond"][mine]
+        if np.isfinite(beyond).any():
+            reach[mine] = np.nanmin(beyond)
+    return reach

@@ -1,0 +1,167 @@
+"""The joint prior of a case: all common variables with their sources and their dependence."""
+
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.case.distributions import Distribution
+from assess.case.reader import Case
+from assess.case.spec import (
+    CaseSpec,
+    GradedConcrete,
+    MeasuredConcrete,
+    NominalCover,
+    Steel,
+    Zone,
+)
+from assess.mechanics.concrete import IN_SITU_EXPONENT, PRIOR_SOURCE, strength_prior
+from assess.probability.dependence import PairDependence, score_correlation_matrix
+from assess.probability.marginals import make_marginal
+from assess.updating.kinds import KINDS
+from assess.updating.variables import AnyVariable, JointPrior, LevelGivenScatter, Variable
+
+FloatArray = NDArray[np.float64]
+
+# Of a prior that leaves the cores to speak: ln(median) about 30 MPa and ln(scatter) about 0.15
+# with standard deviations so large that a few cores swamp them; the densities approach the
+# 1/sigma that EN 1990 annex D stands on.
+VAGUE_LEVEL_SD = 5.0
+VAGUE_SCATTER_SD = 5.0
+COVER_MEAN_SD = 5.0  # [mm] JCSS part 3.10: mean deviation of beams, slabs within some 10 mm
+COVER_SCATTER = (7.5, 0.25)  # [mm], V. JCSS part 3.10: standard deviation 5 to 10 mm
+COVER_SOURCE = "JCSS Probabilistic Model Code, part 3.10, cover; ranges put as distributions"
+
+
+def joint_prior(case: Case) -> JointPrior:
+    """Assemble all common variables of a case.
+
+    Parameters
+    ----------
+    case : Case
+        As read.
+
+    Returns
+    -------
+    JointPrior
+        Zones in the order of the case, then steel, then measuring variables.
+    """
+    variables: list[AnyVariable] = []
+    for name, zone in case.spec.zones.items():
+        variables += _zone_variables(name, zone)
+    variables += [_steel_variable(name, steel) for name, steel in case.spec.steel.items()]
+    for kind in KINDS.values():
+        variables += kind.variables(case)
+    return JointPrior(tuple(variables), _correlation(case.spec, variables))
+
+
+def _correlation(spec: CaseSpec, variables: Sequence[AnyVariable]) -> FloatArray:
+    """Score correlation of all variables from the stated pairs."""
+    pairs = [
+        PairDependence(*item.between, coefficient=item.coefficient, kind=item.measure)
+        for item in spec.dependence
+    ]
+    marginals = {v.name: v.marginal for v in variables if isinstance(v, Variable)}
+    return score_correlation_matrix([v.name for v in variables], pairs, marginals)
+
+
+def _zone_variables(name: str, zone: Zone) -> list[AnyVariable]:
+    return [
+        *_concrete_variables(name, zone),
+        *_cover_variables(name, zone),
+        *_corrosion_variables(name, zone),
+    ]
+
+
+def _concrete_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
+    """Give the level and scatter of the strength in a zone."""
+    concrete = zone.concrete
+    level = (f"{zone_name}.concrete_mean", "median concrete strength", "$f_c$", "MPa")
+    scatter = (f"{zone_name}.concrete_scatter", "scatter of ln strength", "$\\sigma_{\\ln f}$", "-")
+    if isinstance(concrete, GradedConcrete):
+        prior = strength_prior(concrete.grade, concrete.production)
+        # In the structure ln f is 0.96 times that of the standard specimen (JCSS part 3.1);
+        # neither the gain with age nor that of sustained load is counted on.
+        log_mean, log_sd = IN_SITU_EXPONENT * prior.log_mean, IN_SITU_EXPONENT * prior.log_sd
+        tests, degrees = prior.tests, prior.degrees
+        source = f"{PRIOR_SOURCE}; {concrete.grade}, {concrete.production}, {concrete.source}"
+    elif isinstance(concrete, MeasuredConcrete):
+        log_variance = float(np.log1p(concrete.V**2))
+        log_mean = float(np.log(concrete.mean)) - 0.5 * log_variance
+        log_sd, tests = float(np.sqrt(log_variance)), concrete.equivalent_tests
+        degrees = max(tests - 1.0, 1.0)
+        source = concrete.source
+        if concrete.scatter == "known":
+            constant = make_marginal("constant", parameters={"value": log_sd})
+            return [
+                Variable(*scatter, zone_name, source, constant),
+                LevelGivenScatter(*level, zone_name, source, log_mean, tests, scatter[0]),
+            ]
+    else:
+        source = concrete.source or "vague, by choice"
+        vague_scatter = make_marginal(
+            "lognormal", parameters={"log_mean": np.log(0.15), "log_sd": VAGUE_SCATTER_SD}
+        )
+        vague_level = make_marginal(
+            "lognormal", parameters={"log_mean": np.log(30.0), "log_sd": VAGUE_LEVEL_SD}
+        )
+        return [
+            Variable(*scatter, zone_name, source, vague_scatter),
+            Variable(*level, zone_name, source, vague_level),
+        ]
+    spread = make_marginal("scaled inverse chi", parameters={"scale": log_sd, "degrees": degrees})
+    return [
+        Variable(*scatter, zone_name, source, spread),
+        LevelGivenScatter(*level, zone_name, source, log_mean, tests, scatter[0]),
+    ]
+
+
+def _cover_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
+    """Give the mean and scatter of the cover in a zone."""
+    cover = zone.cover
+    mean = (f"{zone_name}.cover_mean", "mean cover", "$c$", "mm", zone_name)
+    scatter = (f"{zone_name}.cover_scatter", "scatter of cover", "$\\sigma_c$", "mm", zone_name)
+    if isinstance(cover, NominalCover):
+        source = f"{COVER_SOURCE}; nominal {cover.nominal:g} mm, {cover.source}"
+        return [
+            Variable(*mean, source, make_marginal("normal", mean=cover.nominal, sd=COVER_MEAN_SD)),
+            Variable(
+                *scatter,
+                source,
+                make_marginal("lognormal", mean=COVER_SCATTER[0], V=COVER_SCATTER[1]),
+            ),
+        ]
+    return [_stated(mean, cover.mean), _stated(scatter, cover.scatter)]
+
+
+def _corrosion_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
+    """Give the level and scatter of onset and current in a zone."""
+    corrosion = zone.corrosion
+    if corrosion is None:
+        return []
+    words = {
+        "onset": ("median onset of corrosion", "$t_i$", "yr"),
+        "onset_scatter": ("scatter of ln onset", "$\\sigma_{\\ln t}$", "-"),
+        "current": ("median corrosion current", "$i_{corr}$", "µA/cm²"),
+        "current_scatter": ("scatter of ln current", "$\\sigma_{\\ln i}$", "-"),
+    }
+    return [
+        _stated((f"{zone_name}.{key}", *said, zone_name), getattr(corrosion, key))
+        for key, said in words.items()
+    ]
+
+
+def _stated(head: tuple[str, str, str, str, str], stated: Distribution) -> Variable:
+    return Variable(*head, stated.source, stated.marginal())
+
+
+def _steel_variable(name: str, steel: Steel) -> Variable:
+    return Variable(
+        f"steel.{name}",
+        f"mean yield strength, {name}",
+        "$f_y$",
+        "MPa",
+        "",
+        steel.source,
+        make_marginal("normal", mean=steel.mean, sd=steel.sd),
+    )

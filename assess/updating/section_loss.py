@@ -1,0 +1,226 @@
+"""Evidence: loss of bar diameter measured at break-outs, and break-outs without loss."""
+
+from collections.abc import Mapping, Sequence
+from typing import Any, cast
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import Field
+
+from assess.case.forms import Column, EvidenceEntry, EvidenceForm
+from assess.case.quantities import CoefficientOfVariation, Length
+from assess.case.reader import Case
+from assess.errors import Fault
+from assess.mechanics.corrosion import penetration_depth
+from assess.updating import corrosion_history as history
+from assess.updating.corrosion_history import Places, Population
+from assess.updating.kind import (
+    EvidenceKind,
+    FloatArray,
+    Numeric,
+    Rows,
+    build_rows,
+    gather,
+    population_local,
+    zone_values,
+)
+from assess.updating.local import Local
+
+NONE_FOUND = ("none", "no loss", "none found", "no loss found")
+
+
+class SectionLossEntry(EvidenceEntry):
+    """What a survey says of its break-outs."""
+
+    detection_limit: Length = Field(
+        description="Smallest loss of radius that would have been noticed; smaller losses are "
+        "reported as none found. [mm]"
+    )
+    error: CoefficientOfVariation = Field(
+        description="Coefficient of variation of a measured loss about the true mean loss."
+    )
+
+
+class SectionLoss(EvidenceKind):
+    r"""Section loss: onset and corrosion current of a place, seen through the loss of its bar.
+
+    Notes
+    -----
+    At a place :math:`\ln t_i \sim N(\ln \bar t, s_t^2)` (onset), :math:`\ln i \sim N(\ln \bar
+    \imath, s_i^2)` (current), and at time t the loss of radius is :math:`p = k\, i\, (t -
+    t_i)^+` by Faraday's law. A loss is found when p reaches the detection limit; then it is
+    measured as :math:`p e^{\epsilon}`, :math:`\epsilon \sim N(0, \ln(1+V^2))`. "None found"
+    says that p is below the limit, whether corrosion has begun or not. Onset and current of the
+    place are integrated out, `corrosion_history.log_likelihood`.
+    """
+
+    form = EvidenceForm(
+        key="section_loss",
+        title="Loss of bar diameter",
+        entry=SectionLossEntry,
+        columns=(
+            Column(
+                "original diameter",
+                "diameter of the sound bar",
+                "mm",
+                above=0.0,
+                below=100.0,
+                usual=(5.0, 50.0),
+            ),
+            Column(
+                "residual diameter",
+                "mean diameter left after cleaning",
+                "mm",
+                above=0.0,
+                below=100.0,
+                usual=(3.0, 50.0),
+                absent=NONE_FOUND,
+            ),
+        ),
+        value="residual diameter",
+    )
+    unit = "mm"
+    log_scale = True
+    carrier = "onset"
+
+    def rows(self, case: Case) -> Rows | None:
+        """Gather the break-outs of all surveys; `Rows.value` is ln of the loss of radius."""
+        items = gather(case, self.form.key)
+        if not items:
+            return None
+        value: list[FloatArray] = []
+        extra: dict[str, list[FloatArray]] = {"age": [], "limit": [], "precision": []}
+        for _, item in items:
+            entry = cast(SectionLossEntry, item.entry)
+            numbers = item.table.numbers
+            loss = 0.5 * (numbers["original diameter"] - numbers["residual diameter"])
+            # A loss read below the detection limit says no more than "none found".
+            found = np.nan_to_num(loss, nan=0.0) >= entry.detection_limit
+            value.append(np.log(np.where(found, loss, np.nan)))
+            count = len(loss)
+            extra["age"].append(np.full(count, item.age))
+            extra["limit"].append(np.full(count, np.log(entry.detection_limit)))
+            extra["precision"].append(np.full(count, 1.0 / np.log1p(entry.error**2)))
+        return build_rows(items, value, extra)
+
+    def faults(self, case: Case) -> Sequence[Fault]:
+        """Find residual diameters above the original, and losses that have healed."""
+        found: list[Fault] = []
+        for _, item in gather(case, self.form.key):
+            numbers = item.table.numbers
+            grown = numbers["residual diameter"] > numbers["original diameter"]
+            found += [
+                Fault(
+                    str(item.table.path),
+                    int(item.table.lines[row]),
+                    "residual diameter exceeds the original one",
+                    f"{numbers['residual diameter'][row]:g} of "
+                    f"{numbers['original diameter'][row]:g} mm",
+                    "at most the original diameter",
+                    "write 'none' where no loss was found",
+                )
+                for row in np.flatnonzero(grown)
+            ]
+            without = [z for z in dict.fromkeys(item.zone) if case.spec.zones[z].corrosion is None]
+            found += [
+                Fault(
+                    str(item.table.path),
+                    int(item.table.lines[0]),
+                    "loss was looked for in a zone without corrosion",
+                    zone,
+                    "zones with `corrosion`",
+                    "state onset and current of the zone in the case file",
+                )
+                for zone in without
+            ]
+        rows = None if found else self.rows(case)
+        if rows is not None:
+            for place in history.healed_places(rows):
+                found.append(
+                    Fault(
+                        str(case.path),
+                        0,
+                        "loss was found at a place and none at a later survey",
+                        place,
+                        "loss that does not shrink",
+                        "give the two break-outs different locations, or mend the table",
+                    )
+                )
+        return found
+
+    def data(self, rows: Rows, stage: int) -> dict[str, NDArray[Any]]:
+        """Places with their earliest found and latest none-found times, and measured losses."""
+        return history.places(rows, stage).data()
+
+    def log_likelihood(
+        self, rows: Rows, values: Mapping[str, Numeric], data: Mapping[str, Numeric]
+    ) -> Numeric:
+        """Log-likelihood of all active break-outs, onset and current integrated out."""
+        population = self._population(rows, values)
+        zone = rows.place_zone
+        return history.log_likelihood(
+            Places.from_data(data, history.count_visits(rows)),
+            Population(*(part[..., zone, None] for part in population)),
+        ).sum()
+
+    def _population(self, rows: Rows, values: Mapping[str, Numeric]) -> Population:
+        return history.population(
+            zone_values(rows, values, "onset"),
+            zone_values(rows, values, "onset_scatter"),
+            zone_values(rows, values, "current"),
+            zone_values(rows, values, "current_scatter"),
+        )
+
+    def simulate(
+        self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator
+    ) -> FloatArray:
+        """Draw ln of the loss at the same break-outs, NaN where none would be found."""
+        draws = self._population(rows, values)
+        shape = (len(draws.log_onset), len(rows.places))
+        onset = np.exp(
+            draws.log_onset[:, rows.place_zone]
+            + draws.onset_scatter[:, rows.place_zone] * rng.standard_normal(shape)
+        )[:, rows.place]
+        log_rate = (
+            draws.log_rate[:, rows.place_zone]
+            + draws.rate_scatter[:, rows.place_zone] * rng.standard_normal(shape)
+        )[:, rows.place]
+        age = np.maximum(rows.extra["age"] - onset, 1e-12)
+        log_loss = log_rate + np.log(age)
+        error = rng.standard_normal(log_loss.shape) / np.sqrt(rows.extra["precision"])
+        return np.where(log_loss >= rows.extra["limit"], log_loss + error, np.nan)
+
+    def local(
+        self,
+        rows: Rows | None,
+        stage: int,
+        section: str,
+        zone: str,
+        values: Mapping[str, FloatArray],
+        rng: np.random.Generator,
+    ) -> dict[str, Local]:
+        """Onset and current (logarithms) at a section, given its own break-outs."""
+        if f"{zone}.onset" not in values:
+            return {}
+        place = None if rows is None else rows.place_of(section)
+        known = None if rows is None or place is None else history.places(rows, stage).one(place)
+        if known is None or not known.anything_known:
+            return {
+                "onset": population_local(values, zone, "onset", "onset_scatter", logarithm=True),
+                "current": population_local(
+                    values, zone, "current", "current_scatter", logarithm=True
+                ),
+            }
+        onset, rate = history.local_posterior(
+            known,
+            history.population(
+                *(
+                    values[f"{zone}.{name}"]
+                    for name in ("onset", "onset_scatter", "current", "current_scatter")
+                )
+            ),
+            rng,
+        )
+        to_current = np.log(penetration_depth(1.0, 1.0))
+        current = Local(rate.mean - to_current, rate.sd, rate.lower, rate.upper)
+        return {"onset": onset, "current": current}
