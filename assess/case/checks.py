@@ -4,42 +4,22 @@ These checks look at the parsed file and not at the model, so that a fault elsew
 does not hide theirs. What has not the shape they look for is the model's to refuse.
 """
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
 from datetime import date
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
-from pydantic import BaseModel, TypeAdapter, ValidationError
+from pydantic import TypeAdapter
 
-from assess.case.distributions import (
-    CurrentDistribution,
-    Distribution,
-    LengthDistribution,
-    NumberDistribution,
-    YearsDistribution,
-)
-from assess.case.forms import FloatArray, Vocabulary
-from assess.case.spec import Built, IsoDate, Zone
+from assess.case.dependence import dependence_faults
+from assess.case.forms import Vocabulary
+from assess.case.spec import Built, IsoDate
+from assess.case.walking import items_at, mapping_at, read_or_none
 from assess.case.yamlfile import Document, Keys, listed, nearest
 from assess.errors import Fault
-from assess.units import QuantityError, convert
-
-if TYPE_CHECKING:
-    from assess.probability.dependence import PairDependence
-    from assess.probability.marginal import Marginal
 
 _ISO_DATE: TypeAdapter[date] = TypeAdapter(IsoDate)
 _BUILT: TypeAdapter[date] = TypeAdapter(Built)
 ALL = "all"  # in place of a name: every one of them
-
-# Where the marginal of a zone's common variable is said outright, and as what.
-_SAID: dict[str, tuple[str, str, type[Distribution]]] = {
-    "cover_mean": ("cover", "mean", LengthDistribution),
-    "cover_scatter": ("cover", "scatter", LengthDistribution),
-    "onset": ("corrosion", "onset", YearsDistribution),
-    "onset_scatter": ("corrosion", "onset_scatter", NumberDistribution),
-    "current": ("corrosion", "current", CurrentDistribution),
-    "current_scatter": ("corrosion", "current_scatter", NumberDistribution),
-}
 
 
 def cross_check(
@@ -70,27 +50,13 @@ def cross_check(
         *_grades(document, vocabulary),
         *_target(document, vocabulary),
         *_option_years(document),
-        *_dependence(document),
+        *dependence_faults(document),
     ]
     wrong, doubts = _survey_dates(document, today)
     return sorted({*faults, *wrong}), sorted(set(doubts))
 
 
 # Walking the parsed file ----------------------------------------------------------------------
-
-
-def mapping_at(data: Any, *keys: Any) -> dict[Any, Any]:
-    """Give the mapping at a place, an empty one where there is none."""
-    for key in keys:
-        data = data.get(key) if isinstance(data, dict) else None
-    return data if isinstance(data, dict) else {}
-
-
-def items_at(data: Any, key: Any) -> Iterator[tuple[int, dict[Any, Any]]]:
-    """Go through the mappings of a list."""
-    found = data.get(key) if isinstance(data, dict) else None
-    if isinstance(found, list):
-        yield from ((i, item) for i, item in enumerate(found) if isinstance(item, dict))
 
 
 def sections_of(data: Any) -> Iterator[tuple[Keys, dict[Any, Any]]]:
@@ -108,14 +74,6 @@ def entries_of(data: Any, vocabulary: Vocabulary) -> Iterator[tuple[Keys, str, d
                 yield ("surveys", i, kind), kind, survey[kind]
             for j, entry in items_at(survey, kind):
                 yield ("surveys", i, kind, j), kind, entry
-
-
-def _read[T](read: Callable[[Any], T], value: Any) -> T | None:
-    """Read a value, None where the model will refuse it."""
-    try:
-        return read(value)
-    except (ValidationError, QuantityError):
-        return None
 
 
 def section_zones(data: Any) -> dict[str, str]:
@@ -240,7 +198,7 @@ def _target(document: Document, vocabulary: Vocabulary) -> Iterator[Fault]:
 
 def _years(document: Document) -> tuple[date | None, int | None, int]:
     structure = mapping_at(document.data, "structure")
-    built = _read(_BUILT.validate_python, structure.get("built"))
+    built = read_or_none(_BUILT.validate_python, structure.get("built"))
     assessed, horizon = (_whole(structure.get(key)) for key in ("assessed", "horizon"))
     return built, assessed, 200 if horizon is None else horizon
 
@@ -255,7 +213,7 @@ def _survey_dates(document: Document, today: date) -> tuple[list[Fault], list[Fa
     seen: dict[date, int] = {}
     for index, survey in items_at(document.data, "surveys"):
         keys = ("surveys", index, "date")
-        day = _read(_ISO_DATE.validate_python, survey.get("date"))
+        day = read_or_none(_ISO_DATE.validate_python, survey.get("date"))
         if day is None:
             continue
         given = day.isoformat()
@@ -288,145 +246,3 @@ def _option_years(document: Document) -> Iterator[Fault]:
                 allowed = f"{assessed} to {assessed + horizon}"
                 keys = ("decision", "options", index, key)
                 yield document.fault(keys, what, given=year, allowed=allowed)
-
-
-# Dependence -----------------------------------------------------------------------------------
-
-
-def known_variables(data: Mapping[Any, Any]) -> dict[str, Keys]:
-    """Name the common variables that `dependence` may speak of.
-
-    Parameters
-    ----------
-    data : mapping
-        The parsed case file.
-
-    Returns
-    -------
-    dict
-        Place of the zone or steel by the variable's full name, such as ``deck.onset``.
-    """
-    found: dict[str, Keys] = {}
-    for name in mapping_at(data, "zones"):
-        corroding = bool(mapping_at(data, "zones", name, "corrosion"))
-        for variable in Zone.variable_names(corroding):
-            found[f"{name}.{variable}"] = ("zones", name)
-    for name in mapping_at(data, "steel"):
-        found[f"steel.{name}"] = ("steel", name)
-    return found
-
-
-def _dependence(document: Document) -> Iterator[Fault]:
-    from assess.probability.dependence import NotPositiveDefiniteError, score_correlation_matrix
-
-    known = known_variables(document.data)
-    marginals = _Marginals(document.data, known)
-    pairs: list[PairDependence] = []
-    seen: dict[frozenset[str], int] = {}
-    for index, node in items_at(document.data, "dependence"):
-        keys = ("dependence", index)
-        between = node.get("between")
-        if not isinstance(between, list) or not all(isinstance(name, str) for name in between):
-            continue
-        strangers = [(i, name) for i, name in enumerate(between) if name not in known]
-        for i, name in strangers:
-            yield _unknown_variable(document, (*keys, "between", i), name, known)
-        both = frozenset(between)
-        if both in seen and not strangers:
-            what = f"the dependence of line {seen[both]} is between the same variables"
-            yield document.fault(keys, what, mend="keep one of the two")
-        elif not strangers and len(between) == 2:
-            pair = _pair(document, keys, node, marginals)
-            if isinstance(pair, Fault):
-                yield pair
-            elif pair is not None:
-                pairs.append(pair)
-        seen.setdefault(both, document.line(keys))
-    names = sorted({name for pair in pairs for name in (pair.first, pair.second)})
-    try:
-        if pairs:
-            score_correlation_matrix(names, pairs, marginals.of(names))
-    except NotPositiveDefiniteError as error:
-        what = "these coefficients cannot hold together: their matrix is not positive definite"
-        given = "; ".join(_in_words(pair, pair.coefficient) for pair in pairs)
-        mend = f"nearest that hold: {_nearest(names, pairs, error.nearest)}"
-        yield document.fault(("dependence",), what, given=given, mend=mend)
-
-
-def _in_words(pair: "PairDependence", coefficient: float) -> str:
-    return f"{pair.first} with {pair.second} {coefficient:.3g}"
-
-
-def _nearest(names: list[str], pairs: "list[PairDependence]", scores: FloatArray) -> str:
-    """Give the nearest coefficients that hold together, each of the kind that was stated."""
-    from assess.probability.dependence import score_to_kendall, score_to_spearman
-
-    back: dict[str, Callable[[float], float]] = {
-        "spearman": score_to_spearman,
-        "kendall": score_to_kendall,
-        "pearson": float,
-    }
-    words = []
-    for pair in pairs:
-        score = float(scores[names.index(pair.first), names.index(pair.second)])
-        words.append(_in_words(pair, back[pair.kind](score)))
-    return "; ".join(words)
-
-
-def _unknown_variable(
-    document: Document, keys: Keys, name: str, known: Mapping[str, Keys]
-) -> Fault:
-    zone, _, variable = name.rpartition(".")
-    what = "there is no such variable"
-    if variable in Zone.variable_names(True) and f"{zone}.cover_mean" in known:
-        what = f"zone {zone!r} has no corrosion, hence no such variable"
-    mend = nearest(name, known)
-    return document.fault(keys, what, given=name, allowed=listed(known), mend=mend)
-
-
-def _pair(
-    document: Document, keys: Keys, node: dict[Any, Any], marginals: "_Marginals"
-) -> "PairDependence | Fault | None":
-    """Read one dependence; None where the model refuses its coefficient."""
-    from assess.probability.dependence import PairDependence
-
-    first, second = node["between"]
-    if first == second:
-        return document.fault(keys, "a variable cannot depend on itself", given=first)
-    for kind in ("spearman", "kendall", "pearson"):
-        value = _read(lambda said: convert(said, "-"), node.get(kind))
-        if value is not None and -1.0 < value < 1.0:
-            pair = PairDependence(first, second, value, kind)
-            try:
-                pair.score(marginals.of((first, second)))
-            except ValueError as error:
-                return document.fault((*keys, kind), str(error))
-            return pair
-    return None
-
-
-class _Marginals:
-    """Marginals of common variables where the file says them outright.
-
-    Others (those that follow from a grade, a nominal cover, a steel) count as normal here: their
-    Pearson coefficient is then the score coefficient. The prior checks with the true ones.
-    """
-
-    def __init__(self, data: Mapping[Any, Any], known: Mapping[str, Keys]) -> None:
-        self._data, self._known = data, known
-
-    def of(self, names: Any) -> "dict[str, Marginal]":
-        """Give the marginals of some variables."""
-        return {name: self._one(name) for name in names}
-
-    def _one(self, name: str) -> "Marginal":
-        from assess.probability.marginals import make_marginal
-
-        said = _SAID.get(name.rpartition(".")[2])
-        if said and self._known[name][0] == "zones":
-            part, key, model = said
-            node = mapping_at(self._data, *self._known[name], part, key)
-            read: BaseModel | None = _read(model.model_validate, node)
-            if isinstance(read, Distribution):
-                return read.marginal()
-        return make_marginal("normal", mean=0.0, sd=1.0)

@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import BaseModel, ConfigDict, ValidationInfo, model_validator
+from pydantic import BaseModel, ConfigDict, Field, ValidationInfo, model_validator
 
 from assess.errors import Fault
 
@@ -55,6 +55,7 @@ class OptionEntry(Closed):
 
     name: str
     kind: str
+    members: tuple[str, ...] = Field((), description="members it is done to; left out: all")
 
 
 @dataclass(frozen=True, slots=True)

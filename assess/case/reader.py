@@ -16,6 +16,7 @@ from assess.case.forms import EvidenceEntry, EvidenceForm, Table, TextArray, Voc
 from assess.case.schema import case_model, spread_defaults
 from assess.case.spec import CaseSpec
 from assess.case.tables import examine_table
+from assess.case.walking import mapping_at
 from assess.case.wording import faults_of
 from assess.case.yamlfile import Document, Keys, listed, nearest, read_yaml
 from assess.errors import CaseError, Fault
@@ -219,7 +220,7 @@ def _places(document: Document, table: Table, zone: Any) -> tuple[TextArray, Tex
 def _misplaced(document: Document, table: Table, zone: Any) -> Iterator[Fault]:
     """Find rows whose zone or section does not exist, or that name a section elsewhere."""
     of_section = checks.section_zones(document.data)
-    known = checks.mapping_at(document.data, "zones").keys()
+    known = mapping_at(document.data, "zones").keys()
     zones, sections = _places(document, table, zone)
     said = table.texts["zone"].tolist()
     seen: set[tuple[str, str, str]] = set()

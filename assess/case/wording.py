@@ -171,7 +171,7 @@ def _either(errors: list[_Error], said: list[Fault]) -> list[Fault]:
     first = errors[0]
     return [
         first.fault(
-            "must be another sort of value", given=short(first.value), allowed=" or ".join(allowed)
+            "fits none of what it may be", given=short(first.value), allowed=" or ".join(allowed)
         )
     ]
 

@@ -23,7 +23,6 @@ class CostedOption(OptionEntry):
     cost: Annotated[float, InUnit(NONE, "a cost", at_least=0.0)] | None = Field(
         None, description="cost in the year it is carried out, in the currency of `costs`"
     )
-    members: tuple[str, ...] = Field((), description="members it is done to; left out: all")
 
 
 class ArrestCorrosion(CostedOption):

@@ -7,31 +7,10 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
+from assess.reliability.section import IndexCurve as IndexCurve
+
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class IndexCurve:
-    """Reliability index of one section over years; every array has shape (n_year,).
-
-    ``period`` is the number of years that each value covers, ending with ``year``.
-    ``low`` and ``high`` bound the index conditional on the draw (common variables known).
-    """
-
-    year: IntArray
-    period: IntArray
-    index: FloatArray  # predictive, all uncertainty integrated
-    low: FloatArray  # 5 % of the conditional index
-    high: FloatArray  # 95 %
-    integration_error: FloatArray  # standard error of `index`, numerical integration
-    mcmc_error: FloatArray  # standard error of `index`, finite Markov chains
-    failure_probability: FloatArray
-
-    @property
-    def error(self) -> FloatArray:
-        """Both errors together."""
-        return np.hypot(self.integration_error, self.mcmc_error)
 
 
 class Standing(StrEnum):
@@ -59,7 +38,7 @@ class Verdict:
     """How one section stands against the target at one stage under one option."""
 
     standing: Standing
-    crossing_year: int | None  # first year below the target, None: not within the horizon
+    crossing_year: int | None  # first year (of `reference.year`) below; None: not in the horizon
     crossing_low: int | None  # 5 % of the crossing year over the draws; None: after the horizon
     crossing_high: int | None  # 95 %; None: after the horizon
     probability_below: float  # share of draws whose conditional index is below target, last year
@@ -78,7 +57,7 @@ class SectionResult:
     option: str
     annual: IndexCurve  # one year at a time
     cumulative: IndexCurve  # from the year of assessment to that year
-    reference: IndexCurve  # of the target's reference period (is `annual` for one year)
+    reference: IndexCurve  # of the target's reference period; its first value is "now"
     independent: IndexCurve | None  # reference period, dependence between variables dropped
     verdict: Verdict
     verdict_independent: Verdict | None

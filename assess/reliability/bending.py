@@ -139,7 +139,7 @@ class Bending(LimitState):
     def load_capacity(
         self, entry: BendingSection, spec: CaseSpec, here: Surroundings
     ) -> FloatArray:
-        """Variable moment that uses the section up, (n, k, n_year). [N·mm]"""
+        """Variable moment that uses the section up, (n, k, n_year) [N·mm]."""
         steel = spec.steel[entry.bars.steel]
         yield_strength = (
             here.common[f"steel.{entry.bars.steel}"]
@@ -174,7 +174,7 @@ class Bending(LimitState):
     def _steel_area(
         self, entry: BendingSection, spec: CaseSpec, here: Surroundings
     ) -> FloatArray | float:
-        """Area of all bars at the end of each year. [mm²]"""
+        """Area of all bars at the end of each year [mm²]."""
         diameter = entry.bars.diameter
         if not here.corrodes:
             return entry.bars.count * np.pi * diameter**2 / 4.0
@@ -196,7 +196,7 @@ class Bending(LimitState):
     def annual_maximum(
         self, entry: BendingSection, spec: CaseSpec, years: FloatArray
     ) -> AnnualMaximum:
-        """Largest variable moment of each year. [N·mm]"""
+        """Largest variable moment of each year [N·mm]."""
         return entry.loads.variable.annual_maximum.in_years(years, spec.structure.assessed)
 
     def assumptions(self, entry: BendingSection, spec: CaseSpec) -> tuple[str, ...]:

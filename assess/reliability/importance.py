@@ -11,7 +11,7 @@ the modes of the integrand, which are found for all draws at once.
 """
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import lru_cache
 
 import numpy as np
@@ -39,6 +39,7 @@ class Problem:
     dimension: int
     draws: int
     years: int
+    load_ratio: FloatArray = field(default_factory=lambda: np.zeros(0))  # mode over scale, a year
 
 
 @dataclass(frozen=True, slots=True, eq=False)

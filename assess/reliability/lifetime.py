@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from assess.reliability.importance import Problem, Sample, draw_sample, find_modes
-from assess.reliability.index import index_from_probability, index_error
+from assess.reliability.index import index_error, index_from_probability
 
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]

@@ -187,7 +187,8 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
         )
         return np.asarray((mode[years] - capacity) / scale[years])
 
-    return Problem(log_hazard, len(names), len(next(iter(state.common.values()))), len(age))
+    count = len(next(iter(state.common.values())))
+    return Problem(log_hazard, len(names), count, len(age), mode / scale)
 
 
 def _surroundings(

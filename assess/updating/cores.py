@@ -90,6 +90,10 @@ class Cores(EvidenceKind):
     )
     unit = "MPa"
     log_scale = True
+    assumption = (
+        "Core strengths of a zone are lognormal from place to place; the errors of the correction "
+        "factors of ACI 214.4R-10 are common to all cores."
+    )
     carrier = "concrete_mean"
 
     def rows(self, case: Case) -> Rows | None:

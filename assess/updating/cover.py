@@ -87,6 +87,10 @@ class Cover(EvidenceKind):
     )
     unit = "mm"
     log_scale = False
+    assumption = (
+        "Covers of a zone are normal from place to place; a meter has one unknown bias for all of "
+        "its readings and a stated scatter; readings beyond its range count as at least that much."
+    )
     carrier = "cover_mean"
 
     def rows(self, case: Case) -> Rows | None:

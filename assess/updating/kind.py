@@ -55,6 +55,7 @@ class EvidenceKind(ABC):
     form: ClassVar[EvidenceForm]
     unit: ClassVar[str]  # of what is shown to people
     log_scale: ClassVar[bool]  # whether `Rows.value` is the logarithm of what is shown
+    assumption: ClassVar[str]  # a sentence for the report
     carrier: ClassVar[str]  # zone variable whose density carries the data in the report
 
     @abstractmethod

@@ -1,7 +1,7 @@
 """Sampling the posterior: one compilation for all stages, the gate, one retry."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, Protocol
 
 import numpy as np
@@ -52,6 +52,10 @@ class Diagnostics:
     def passed(self) -> bool:
         """Whether the draws may be relied on."""
         return not self.failures
+
+    def without_judgement(self) -> "Diagnostics":
+        """Keep the figures and drop the verdict: independent draws have nothing to converge."""
+        return replace(self, failures=())
 
 
 class Sampler(Protocol):

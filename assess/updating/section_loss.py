@@ -81,6 +81,11 @@ class SectionLoss(EvidenceKind):
     )
     unit = "mm"
     log_scale = True
+    assumption = (
+        "Onset and corrosion current at a place are lognormal within the zone and independent of "
+        "each other there; the current is constant from the onset on; a break-out without loss "
+        "says that the loss was below its detection limit."
+    )
     carrier = "onset"
 
     def rows(self, case: Case) -> Rows | None:

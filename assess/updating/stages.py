@@ -86,8 +86,7 @@ def prior_draws(spec: Spec, settings: Settings, used: Sequence[str]) -> StageDra
         np.zeros(shape[:2]),
         0,
         False,
-        # Independent draws have nothing to converge; the figures are shown, not judged.
-        replace(diagnostics, failures=()),
+        diagnostics.without_judgement(),
     )
 
 
@@ -182,5 +181,4 @@ def _sample_once(
 
 def _stage_seed(seed: int, number: int) -> int:
     """Derive a stage's seed; neighbouring case seeds give unrelated streams."""
-    state = np.random.SeedSequence([seed, number]).generate_state(1)
-    return int(state[0])
+    return int(np.random.SeedSequence([seed, number]).generate_state(1).item())

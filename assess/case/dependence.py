@@ -1,0 +1,185 @@
+"""Checks of the dependence that a case file states between common variables."""
+
+from collections.abc import Callable, Iterator, Mapping
+from typing import TYPE_CHECKING, Any
+
+from pydantic import BaseModel
+
+from assess.case.distributions import (
+    CurrentDistribution,
+    Distribution,
+    LengthDistribution,
+    NumberDistribution,
+    YearsDistribution,
+)
+from assess.case.forms import FloatArray
+from assess.case.spec import Zone
+from assess.case.walking import items_at, mapping_at, read_or_none
+from assess.case.yamlfile import Document, Keys, listed, nearest
+from assess.errors import Fault
+from assess.units import convert
+
+if TYPE_CHECKING:
+    from assess.probability.dependence import PairDependence
+    from assess.probability.marginal import Marginal
+
+# Where the marginal of a zone's common variable is said outright, and as what.
+_SAID: dict[str, tuple[str, str, type[Distribution]]] = {
+    "cover_mean": ("cover", "mean", LengthDistribution),
+    "cover_scatter": ("cover", "scatter", LengthDistribution),
+    "onset": ("corrosion", "onset", YearsDistribution),
+    "onset_scatter": ("corrosion", "onset_scatter", NumberDistribution),
+    "current": ("corrosion", "current", CurrentDistribution),
+    "current_scatter": ("corrosion", "current_scatter", NumberDistribution),
+}
+
+
+def known_variables(data: Mapping[Any, Any]) -> dict[str, Keys]:
+    """Name the common variables that `dependence` may speak of.
+
+    Parameters
+    ----------
+    data : mapping
+        The parsed case file.
+
+    Returns
+    -------
+    dict
+        Place of the zone or steel by the variable's full name, such as ``deck.onset``.
+    """
+    found: dict[str, Keys] = {}
+    for name in mapping_at(data, "zones"):
+        corroding = bool(mapping_at(data, "zones", name, "corrosion"))
+        for variable in Zone.variable_names(corroding):
+            found[f"{name}.{variable}"] = ("zones", name)
+    for name in mapping_at(data, "steel"):
+        found[f"steel.{name}"] = ("steel", name)
+    return found
+
+
+def dependence_faults(document: Document) -> Iterator[Fault]:
+    """Check the dependence in the prior: names, coefficients, and whether they hold together.
+
+    Parameters
+    ----------
+    document : Document
+        The case file.
+
+    Yields
+    ------
+    Fault
+        Each with its line.
+    """
+    from assess.probability.dependence import NotPositiveDefiniteError, score_correlation_matrix
+
+    known = known_variables(document.data)
+    marginals = _Marginals(document.data, known)
+    pairs: list[PairDependence] = []
+    seen: dict[frozenset[str], int] = {}
+    for index, node in items_at(document.data, "dependence"):
+        keys = ("dependence", index)
+        between = node.get("between")
+        if not isinstance(between, list) or not all(isinstance(name, str) for name in between):
+            continue
+        strangers = [(i, name) for i, name in enumerate(between) if name not in known]
+        for i, name in strangers:
+            yield _unknown_variable(document, (*keys, "between", i), name, known)
+        both = frozenset(between)
+        if both in seen and not strangers:
+            what = f"the dependence of line {seen[both]} is between the same variables"
+            yield document.fault(keys, what, mend="keep one of the two")
+        elif not strangers and len(between) == 2:
+            pair = _pair(document, keys, node, marginals)
+            if isinstance(pair, Fault):
+                yield pair
+            elif pair is not None:
+                pairs.append(pair)
+        seen.setdefault(both, document.line(keys))
+    names = sorted({name for pair in pairs for name in (pair.first, pair.second)})
+    try:
+        if pairs:
+            score_correlation_matrix(names, pairs, marginals.of(names))
+    except NotPositiveDefiniteError as error:
+        what = "these coefficients cannot hold together: their matrix is not positive definite"
+        given = "; ".join(_in_words(pair, pair.coefficient) for pair in pairs)
+        mend = f"nearest that hold: {_nearest(names, pairs, error.nearest)}"
+        yield document.fault(("dependence",), what, given=given, mend=mend)
+
+
+def _in_words(pair: "PairDependence", coefficient: float) -> str:
+    return f"{pair.first} with {pair.second} {coefficient:.3g}"
+
+
+def _nearest(names: list[str], pairs: "list[PairDependence]", scores: FloatArray) -> str:
+    """Give the nearest coefficients that hold together, each of the kind that was stated."""
+    from assess.probability.dependence import score_to_kendall, score_to_spearman
+
+    back: dict[str, Callable[[float], float]] = {
+        "spearman": score_to_spearman,
+        "kendall": score_to_kendall,
+        "pearson": float,
+    }
+    words = []
+    for pair in pairs:
+        score = float(scores[names.index(pair.first), names.index(pair.second)])
+        words.append(_in_words(pair, back[pair.kind](score)))
+    return "; ".join(words)
+
+
+def _unknown_variable(
+    document: Document, keys: Keys, name: str, known: Mapping[str, Keys]
+) -> Fault:
+    zone, _, variable = name.rpartition(".")
+    what = "there is no such variable"
+    if variable in Zone.variable_names(True) and f"{zone}.cover_mean" in known:
+        what = f"zone {zone!r} has no corrosion, hence no such variable"
+    mend = nearest(name, known)
+    return document.fault(keys, what, given=name, allowed=listed(known), mend=mend)
+
+
+def _pair(
+    document: Document, keys: Keys, node: dict[Any, Any], marginals: "_Marginals"
+) -> "PairDependence | Fault | None":
+    """Read one dependence; None where the model refuses its coefficient."""
+    from assess.probability.dependence import PairDependence
+
+    first, second = node["between"]
+    if first == second:
+        return document.fault(keys, "a variable cannot depend on itself", given=first)
+    for kind in ("spearman", "kendall", "pearson"):
+        value = read_or_none(lambda said: convert(said, "-"), node.get(kind))
+        if value is not None and -1.0 < value < 1.0:
+            pair = PairDependence(first, second, value, kind)
+            try:
+                pair.score(marginals.of((first, second)))
+            except ValueError as error:
+                return document.fault((*keys, kind), str(error))
+            return pair
+    return None
+
+
+class _Marginals:
+    """Marginals of common variables where the file says them outright.
+
+    Others (those that follow from a grade, a nominal cover, a steel) count as normal here: their
+    Pearson coefficient is then the score coefficient. The prior checks with the true ones.
+    """
+
+    def __init__(self, data: Mapping[Any, Any], known: Mapping[str, Keys]) -> None:
+        self._data, self._known = data, known
+
+    def of(self, names: Any) -> "dict[str, Marginal]":
+        """Give the marginals of some variables."""
+        return {name: self._one(name) for name in names}
+
+    def _one(self, name: str) -> "Marginal":
+        from assess.probability.marginals import make_marginal
+
+        said = _SAID.get(name.rpartition(".")[2])
+        if said and self._known[name][0] == "zones":
+            part, key, model = said
+            node = mapping_at(self._data, *self._known[name], part, key)
+            read: BaseModel | None = read_or_none(model.model_validate, node)
+            if isinstance(read, Distribution):
+                return read.marginal()
+        return make_marginal("normal", mean=0.0, sd=1.0)

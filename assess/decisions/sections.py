@@ -1,0 +1,194 @@
+"""All sections of a case at one stage: reliability, verdicts, dependence dropped, options."""
+
+from collections.abc import Iterator, Mapping, Sequence
+from concurrent.futures import Executor, Future
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.case.forms import SectionEntry
+from assess.case.reader import Case
+from assess.decisions.options import LEAVE, OPTIONS
+from assess.decisions.results import SectionResult, Target, Verdict
+from assess.decisions.verdicts import verdict
+from assess.reliability.index import probability_from_index
+from assess.reliability.limit_state import Action
+from assess.reliability.problem import (
+    SectionState,
+    ages,
+    calendar_years,
+    common_names,
+    section_state,
+    without_dependence,
+)
+from assess.reliability.section import (
+    Precision,
+    SectionReliability,
+    load_factor,
+    section_reliability,
+    section_sensitivities,
+)
+from assess.updating.model import Spec
+from assess.updating.stages import StageDraws
+
+FloatArray = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class Question:
+    """What every section is asked."""
+
+    target: Target
+    precision: Precision
+    seed: int
+
+
+def used_variables(case: Case) -> list[str]:
+    """Name the common variables that any limit state uses, in order of first use."""
+    return list(
+        dict.fromkeys(
+            name
+            for entry in case.spec.sections().values()
+            for name in common_names(case.spec, entry)
+        )
+    )
+
+
+def member_of(case: Case, section: str) -> str:
+    """Name the member that a section belongs to."""
+    return next(
+        member.name
+        for member in case.spec.members
+        if any(entry.name == section for entry in member.sections)
+    )
+
+
+def actions(case: Case, section: str) -> dict[str, Action]:
+    """Give what each stated option does to a section; `leave` is not among them."""
+    years, age = calendar_years(case), ages(case)
+    member = member_of(case, section)
+    found = {}
+    for option in case.spec.decision.options:
+        applies = not option.members or member in option.members
+        kind = OPTIONS[option.kind]
+        found[option.name] = kind.action(option, case.spec, years, age) if applies else Action()
+    return found
+
+
+def stage_results(
+    case: Case,
+    spec: Spec,
+    draws: StageDraws,
+    question: Question,
+    executor: Executor,
+    *,
+    final: bool,
+) -> list[Future[list[SectionResult]]]:
+    """Set all sections of a stage to work; each future gives one section's results.
+
+    Parameters
+    ----------
+    case, spec : Case, Spec
+        The case and its measurements.
+    draws : StageDraws
+        State of knowledge.
+    question : Question
+        Target, precision, seed.
+    executor : Executor
+        Runs the sections; numbers do not depend on how many run at a time.
+    final : bool
+        Whether this is the last stage, for which options are computed too.
+
+    Returns
+    -------
+    list of Future
+        In the order of the case's sections.
+    """
+    values = draws.values()
+    return [
+        executor.submit(_section, case, spec, entry, draws, values, question, final=final)
+        for entry in case.spec.sections().values()
+    ]
+
+
+def _section(
+    case: Case,
+    spec: Spec,
+    entry: SectionEntry,
+    draws: StageDraws,
+    values: Mapping[str, FloatArray],
+    question: Question,
+    *,
+    final: bool,
+) -> list[SectionResult]:
+    """Give results of one section: `leave`, then at the last stage each option."""
+    state = section_state(case, spec, entry, draws.number, values, question.seed)
+    dropped = without_dependence(state, case, spec, question.seed) if final else None
+    results = [_result(case, state, dropped, draws.name, LEAVE, Action(), question)]
+    if final:
+        for name, action in actions(case, entry.name).items():
+            results.append(_result(case, state, None, draws.name, name, action, question))
+    return results
+
+
+def _result(
+    case: Case,
+    state: SectionState,
+    dropped: SectionState | None,
+    stage: str,
+    option: str,
+    action: Action,
+    question: Question,
+) -> SectionResult:
+    """Integrate one section under one option and judge it."""
+    period = question.target.period
+    found = section_reliability(case, state, action, period, question.precision)
+    sensitivities = section_sensitivities(state, found)
+    governing = next(iter(sensitivities), "")
+    judged = _judge(found, question, governing)
+    independent = None
+    if dropped is not None:
+        independent = section_reliability(case, dropped, action, period, question.precision)
+    return SectionResult(
+        section=state.entry.name,
+        member=member_of(case, state.entry.name),
+        zone=state.entry.zone,
+        stage=stage,
+        option=option,
+        annual=found.annual,
+        cumulative=found.cumulative,
+        reference=found.reference,
+        independent=None if independent is None else independent.reference,
+        verdict=judged,
+        verdict_independent=(
+            None if independent is None else _judge(independent, question, governing)
+        ),
+        sensitivities=sensitivities,
+        evaluations=found.evaluations,
+        note=_note(found, question.precision.tolerance),
+    )
+
+
+def _judge(found: SectionReliability, question: Question, governing: str) -> Verdict:
+    """Judge integrated curves, with the load factor that would meet the target now."""
+    allowed = float(probability_from_index(question.target.index))
+    factor = load_factor(found, allowed, question.target.period)
+    return verdict(found.reference, found.conditional, question.target, factor, governing)
+
+
+def _note(found: SectionReliability, tolerance: float) -> str:
+    """Say what the reader of the index must know."""
+    curve = found.annual
+    if not np.all(np.isfinite(curve.index)):
+        return "the failure probability is below what can be represented"
+    worst = float(np.max(curve.integration_error[curve.index > 0.0], initial=0.0))
+    if worst > tolerance:
+        return f"integration error of the index {worst:.3f}, larger than the {tolerance:g} asked"
+    return ""
+
+
+def gather(futures: Sequence[Future[list[SectionResult]]]) -> Iterator[SectionResult]:
+    """Wait for the sections of a stage in order."""
+    for future in futures:
+        yield from future.result()

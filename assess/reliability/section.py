@@ -1,0 +1,172 @@
+"""Reliability of one section over the years: curves, conditional indices, sensitivities."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.case.reader import Case
+from assess.reliability.importance import Sample
+from assess.reliability.lifetime import Probabilities, integrate, probabilities, windows
+from assess.reliability.limit_state import Action
+from assess.reliability.problem import SectionState, build_problem, calendar_years
+from assess.reliability.sensitivity import sensitivity_factors
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+BAND = (0.05, 0.95)  # quantiles of the index conditional on the draw
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class IndexCurve:
+    """Reliability index of one section over years; every array has shape (n_year,).
+
+    ``period`` is the number of years that each value covers, ending with ``year``.
+    ``low`` and ``high`` bound the index conditional on the draw (common variables known).
+    """
+
+    year: IntArray
+    period: IntArray
+    index: FloatArray  # predictive, all uncertainty integrated
+    low: FloatArray  # 5 % of the conditional index
+    high: FloatArray  # 95 %
+    integration_error: FloatArray  # standard error of `index`, numerical integration
+    mcmc_error: FloatArray  # standard error of `index`, finite Markov chains
+    failure_probability: FloatArray
+
+    @property
+    def error(self) -> FloatArray:
+        """Both errors together."""
+        return np.asarray(np.hypot(self.integration_error, self.mcmc_error))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class SectionReliability:
+    """What the integral says of one section."""
+
+    annual: IndexCurve
+    cumulative: IndexCurve
+    reference: IndexCurve
+    conditional: FloatArray  # probability given the draw, (n_draw, n_reference)
+    sample: Sample
+    load_ratio: FloatArray  # mode over scale of each year's load, (n_year,)
+    evaluations: int
+
+
+@dataclass(frozen=True, slots=True)
+class Precision:
+    """How exactly to integrate, and from which seed."""
+
+    chains: int
+    tolerance: float
+    seed: int
+
+
+def section_reliability(
+    case: Case, state: SectionState, action: Action, period: int, precision: Precision
+) -> SectionReliability:
+    """Integrate one section under one option.
+
+    Parameters
+    ----------
+    case : Case
+        The case.
+    state : SectionState
+        The section in one state of knowledge.
+    action : Action
+        What the option does.
+    period : int
+        Reference period of the target [yr], at most the horizon.
+    precision : Precision
+        Tolerance and seed; equal seeds give common random numbers.
+
+    Returns
+    -------
+    SectionReliability
+        Yearly, cumulative and for every window of the reference period.
+    """
+    problem = build_problem(case, state, action)
+    sample, annual = integrate(
+        problem, chains=precision.chains, tolerance=precision.tolerance, seed=precision.seed
+    )
+    years = calendar_years(case)
+    last = np.arange(problem.years)
+    cumulative = probabilities(sample, np.zeros_like(last), last, precision.chains)
+    if period == 1:
+        reference, until = annual, last
+    else:
+        first, until = windows(problem.years, period)
+        reference = probabilities(sample, first, until, precision.chains)
+    return SectionReliability(
+        _curve(annual, years, np.ones_like(last)),
+        _curve(cumulative, years, last + 1),
+        _curve(reference, years[until], np.full(len(until), period)),
+        reference.conditional,
+        sample,
+        problem.load_ratio,
+        sample.evaluations,
+    )
+
+
+def _curve(found: Probabilities, year: IntArray, period: IntArray) -> IndexCurve:
+    return IndexCurve(
+        year,
+        period,
+        found.index,
+        found.index_quantile(BAND[0]),
+        found.index_quantile(BAND[1]),
+        found.integration_error,
+        found.mcmc_error,
+        found.probability,
+    )
+
+
+def section_sensitivities(state: SectionState, found: SectionReliability) -> dict[str, float]:
+    """Sensitivity factors by group for failure in the last year of the horizon."""
+    return sensitivity_factors(state, found.sample, year=-1)
+
+
+def load_factor(found: SectionReliability, target_probability: float, period: int) -> float | None:
+    r"""Factor on the variable load that just meets the target in the first reference period.
+
+    Parameters
+    ----------
+    found : SectionReliability
+        Of the section with today's load.
+    target_probability : float
+        Failure probability that the target allows in a reference period.
+    period : int
+        Reference period [yr].
+
+    Returns
+    -------
+    float or None
+        The factor, below 1 where the target is missed today; None where no load at all could be
+        carried, or more than five times today's.
+
+    Notes
+    -----
+    A Gumbel maximum scaled by f has mode f u and scale f b, so that with :math:`x = (u - q)/b`
+    of today the logarithm of the hazard becomes :math:`u/b - (u/b - x)/f`. The same weighted
+    sample serves all factors (common random numbers); bisection on ln f.
+    """
+    sample = found.sample
+    hazard = np.maximum(sample.hazard[..., :period], 1e-300)
+    ratio = found.load_ratio[:period]
+    spare = ratio - np.log(hazard)
+
+    def probability(log_factor: float) -> float:
+        scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 50.0)).sum(axis=-1)
+        return float(np.mean(sample.weight * -np.expm1(-scaled)))
+
+    low, high = np.log(0.02), np.log(5.0)
+    if probability(low) > target_probability or probability(high) < target_probability:
+        return None
+    for _ in range(30):
+        middle = 0.5 * (low + high)
+        if probability(middle) > target_probability:
+            high = middle
+        else:
+            low = middle
+    return float(np.exp(low))

@@ -1,0 +1,198 @@
+"""Checks of fit: whether data drawn from the model look like those that were measured."""
+
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.case.reader import Case
+from assess.updating.kind import EvidenceKind, Rows
+from assess.updating.kinds import KINDS
+from assess.updating.model import Spec
+from assess.updating.stages import StageDraws
+
+FloatArray = NDArray[np.float64]
+BoolArray = NDArray[np.bool_]
+
+REPLICATES = 400  # data sets drawn per stage
+SHOWN = 2000  # simulated values kept for a picture
+SURPRISING = 0.02  # a two-sided p-value below it is put into words
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DataSet:
+    """Measurements of one kind in one zone at one survey, and how well the model foretells them.
+
+    ``p_values`` and ``predictive`` go by stage: the share of simulated data sets whose
+    statistic is at least the measured one, and simulated single values.
+    """
+
+    kind: EvidenceKind
+    stage: int
+    zone: str
+    values: FloatArray  # finite ones, in the unit shown
+    count: int
+    missing: int  # censored, or none found
+    sections: tuple[str, ...]
+    p_values: Mapping[str, Mapping[str, float]]
+    predictive: Mapping[str, FloatArray]
+
+
+def _mean(values: FloatArray) -> FloatArray:
+    return np.asarray(np.nanmean(values, axis=-1))
+
+
+def _scatter(values: FloatArray) -> FloatArray:
+    return np.asarray(np.nanstd(values, axis=-1))
+
+
+def _minimum(values: FloatArray) -> FloatArray:
+    return np.asarray(np.nanmin(values, axis=-1))
+
+
+STATISTICS: Mapping[str, Callable[[FloatArray], FloatArray]] = {
+    "mean": _mean,
+    "scatter": _scatter,
+    "minimum": _minimum,
+}
+
+
+def data_sets(case: Case, spec: Spec, stages: Sequence[StageDraws], seed: int) -> list[DataSet]:
+    """Check every data set against every stage.
+
+    Parameters
+    ----------
+    case, spec : Case, Spec
+        The case and its measurements.
+    stages : sequence of StageDraws
+        Prior and posteriors.
+    seed : int
+        Of the simulated data.
+
+    Returns
+    -------
+    list of DataSet
+        By kind, survey and zone. At the stage that includes a data set its p-values are
+        posterior predictive, at earlier ones they say how the data were foretold.
+
+    References
+    ----------
+    .. [1] A. Gelman, X.-L. Meng, H. Stern, Posterior predictive assessment of model fitness via
+       realized discrepancies, Stat. Sinica 6 (1996) 733-807.
+    """
+    found = []
+    for number, (key, rows) in enumerate(spec.rows.items()):
+        kind = KINDS[key]
+        simulated = {}
+        for stage in stages:
+            rng = np.random.default_rng([seed, stage.number, number, 17])
+            values = stage.values()
+            chosen = rng.choice(len(next(iter(values.values()))), REPLICATES, replace=False)
+            picked = {name: draws[chosen] for name, draws in values.items()}
+            simulated[stage.name] = kind.simulate(rows, picked, rng)
+        for survey, zone, here in _parts(rows):
+            found.append(_data_set(kind, rows, survey, zone, here, simulated))
+    return found
+
+
+def _parts(rows: Rows) -> Iterator[tuple[int, int, BoolArray]]:
+    """Go through (stage, zone, mask) of each data set."""
+    for stage in np.unique(rows.stage):
+        for zone in np.unique(rows.zone[rows.stage == stage]):
+            yield int(stage), int(zone), (rows.stage == stage) & (rows.zone == zone)
+
+
+def _data_set(
+    kind: EvidenceKind,
+    rows: Rows,
+    survey: int,
+    zone: int,
+    here: BoolArray,
+    simulated: Mapping[str, FloatArray],
+) -> DataSet:
+    """Compare one data set with its simulations."""
+    measured = rows.value[here]
+    finite = np.isfinite(measured)
+    shown = np.exp if kind.log_scale else np.asarray
+    p_values, predictive = {}, {}
+    for stage, values in simulated.items():
+        mine = values[:, here]
+        p_values[stage] = _p_values(measured, mine)
+        single = mine[np.isfinite(mine)][:SHOWN]
+        predictive[stage] = np.asarray(shown(single), dtype=np.float64)
+    names = [rows.places[place] for place in np.unique(rows.place[here])]
+    return DataSet(
+        kind,
+        survey,
+        rows.zones[zone],
+        np.asarray(shown(measured[finite]), dtype=np.float64),
+        len(measured),
+        int((~finite).sum()),
+        tuple(name.removeprefix("section ") for name in names if name.startswith("section ")),
+        p_values,
+        predictive,
+    )
+
+
+def _p_values(measured: FloatArray, simulated: FloatArray) -> dict[str, float]:
+    """Share of simulated data sets whose statistic is at least the measured one."""
+    found: dict[str, float] = {}
+    finite = np.isfinite(measured)
+    if finite.sum() >= 3:
+        # A simulated data set of fewer than three values has no scatter to compare.
+        usable = simulated[np.isfinite(simulated).sum(axis=1) >= 3]
+        if len(usable):
+            for name, statistic in STATISTICS.items():
+                found[name] = _share(statistic(usable), float(statistic(measured)))
+    if not finite.all():
+        found["share without a value"] = _share(
+            (~np.isfinite(simulated)).mean(axis=1), float((~finite).mean())
+        )
+    return found
+
+
+def _share(simulated: FloatArray, measured: float) -> float:
+    """P-value with half of the ties, so that a discrete statistic is not called surprising."""
+    return float(np.mean(simulated > measured) + 0.5 * np.mean(simulated == measured))
+
+
+def surprises(sets: Sequence[DataSet], stage_names: Sequence[str]) -> list[tuple[str, str]]:
+    """Put into words what the model did not foretell, and what it does not reproduce.
+
+    Parameters
+    ----------
+    sets : sequence of DataSet
+        From `data_sets`.
+    stage_names : sequence of str
+        Of all stages, the prior first.
+
+    Returns
+    -------
+    list of (subject, words)
+        Conflicts of data with the knowledge before them, and misfits after.
+    """
+    words = []
+    for item in sets:
+        subject = f"{item.kind.form.title}, {item.zone}, {stage_names[item.stage]}"
+        before, after = stage_names[item.stage - 1], stage_names[item.stage]
+        for statistic, value in item.p_values[before].items():
+            if min(value, 1.0 - value) < SURPRISING / 2:
+                words.append(
+                    (
+                        subject,
+                        f"The {statistic} of the data was hardly foretold before this survey "
+                        f"(p = {value:.3f} at stage {before}): prior and data disagree; check "
+                        "the prior's source and the table.",
+                    )
+                )
+        for statistic, value in item.p_values[after].items():
+            if min(value, 1.0 - value) < SURPRISING / 2:
+                words.append(
+                    (
+                        subject,
+                        f"The {statistic} of the data is not reproduced after this survey "
+                        f"(p = {value:.3f}): the model does not describe these data well.",
+                    )
+                )
+    return words
