@@ -84,7 +84,11 @@ def _concrete_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
         # neither the gain with age nor that of sustained load is counted on.
         log_mean, log_sd = IN_SITU_EXPONENT * prior.log_mean, IN_SITU_EXPONENT * prior.log_sd
         tests, degrees = prior.tests, prior.degrees
-        source = f"{PRIOR_SOURCE}; {concrete.grade}, {concrete.production}, {concrete.source}"
+        source = (
+            f"{PRIOR_SOURCE}; {concrete.grade}, {concrete.production}, {concrete.source}; taken to "
+            f"the structure by ln f = {IN_SITU_EXPONENT:g} ln f of standard specimens (part 3.1), "
+            "no gain with age counted"
+        )
     elif isinstance(concrete, MeasuredConcrete):
         log_variance = float(np.log1p(concrete.V**2))
         log_mean = float(np.log(concrete.mean)) - 0.5 * log_variance
