@@ -75,7 +75,7 @@ def _parser() -> argparse.ArgumentParser:
     run = commands.add_parser("run", help="update, integrate, decide, report", epilog=CAUTION)
     run.add_argument("case", type=Path, metavar="CASE.yaml")
     run.add_argument("--out", type=Path, metavar="DIR", help="default: reports/<name of the case>")
-    run.add_argument("--seed", type=int, metavar="N", help="in place of sampling.seed")
+    run.add_argument("--seed", type=_seed, metavar="N", help="in place of sampling.seed")
     run.add_argument(
         "--accept-unconverged",
         action="store_true",
@@ -97,6 +97,17 @@ def _parser() -> argparse.ArgumentParser:
     return parser
 
 
+def _seed(text: str) -> int:
+    """Read a seed, refusing what the case file would refuse."""
+    try:
+        number = int(text)
+    except ValueError:
+        number = -1
+    if not 0 <= number < 2**63:
+        raise argparse.ArgumentTypeError(f"given {text!r}, allowed a whole number from 0 to 2^63-1")
+    return number
+
+
 def _say(text: str, *, error: bool = False) -> None:
     stream = sys.stderr if error else sys.stdout
     stream.write(text + "\n")
@@ -112,7 +123,7 @@ def _show_faults(faults: Sequence[Fault]) -> None:
 def _show_doubts(doubts: Sequence[Fault]) -> None:
     if not doubts:
         return
-    _say(f"{len(doubts)} doubtful {'datum' if len(doubts) == 1 else 'data'}, used as they stand:")
+    _say(f"doubtful data, used as they stand: {len(doubts)}")
     for doubt in doubts:
         _say(f"  {doubt}")
 
@@ -128,8 +139,8 @@ def _check(said: argparse.Namespace) -> int:
     case = reading.case
     rows = sum(len(item.table) for item in case.evidence)
     _say(
-        f"{said.case}: no faults; {len(case.spec.zones)} zones, {len(case.spec.sections())} "
-        f"sections, {len(case.stages)} surveys with {rows} measurements"
+        f"{said.case}: no faults; zones {len(case.spec.zones)}, sections "
+        f"{len(case.spec.sections())}, surveys {len(case.stages)}, measurements {rows}"
     )
     return DONE
 
@@ -138,6 +149,7 @@ def _run(said: argparse.Namespace) -> int:
     from assess.terminal import RunScreen
 
     out = said.out or Path("reports") / said.case.stem
+    _require_replaceable(out)
     with RunScreen() as screen:
         from assess.pipeline import RunOptions, run_case
 
@@ -148,6 +160,17 @@ def _run(said: argparse.Namespace) -> int:
         )
     screen.show(record, out / "report.html")
     return DONE
+
+
+def _require_replaceable(out: Path) -> None:
+    """Refuse to put a run in the place of anything but an earlier run."""
+    if not out.exists() or (out / "run.json").is_file():
+        return
+    if not out.is_dir():
+        raise CaseError([Fault(str(out), 0, "there is a file where the report's folder would be")])
+    if any(out.iterdir()):
+        what = "the folder holds something other than a run, which would be lost"
+        raise CaseError([Fault(str(out), 0, what, mend="give --out a new or an empty folder")])
 
 
 def _command(said: argparse.Namespace) -> str:
@@ -162,7 +185,7 @@ def _command(said: argparse.Namespace) -> str:
 def _new(said: argparse.Namespace) -> int:
     from assess.starter import write_starter
 
-    for path in write_starter(said.name, Path.cwd()):
+    for path in write_starter(said.name, Path()):
         _say(f"wrote {path}")
     _say(f"next: assess run configs/{said.name}.yaml")
     return DONE

@@ -32,6 +32,7 @@ from assess.reliability.section import Precision
 from assess.updating.checks import DataSet, data_sets, surprises
 from assess.updating.kinds import KINDS
 from assess.updating.model import Spec, specify
+from assess.updating.prior import joint_prior
 from assess.updating.sampling import Settings
 from assess.updating.stages import StageDraws, posterior_draws, prior_draws, stage_list
 from assess.vocabulary import vocabulary
@@ -83,6 +84,10 @@ def check_case(path: Path) -> CaseReading:
         return reading
     faults = [fault for kind in KINDS.values() for fault in kind.faults(reading.case)]
     faults += _decision_faults(reading.case)
+    try:
+        joint_prior(reading.case)
+    except ValueError as error:  # a Pearson coefficient that the true marginals do not allow
+        faults.append(Fault(str(path), 0, f"dependence: {error}"))
     if faults:
         return CaseReading(None, tuple(sorted(faults)), reading.doubts)
     return reading

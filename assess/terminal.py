@@ -2,11 +2,12 @@
 
 import sys
 import threading
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 from types import TracebackType
 from typing import Self
 
-from rich.console import Console
+from rich.console import Console, JustifyMethod
 from rich.progress import BarColumn, Progress, SpinnerColumn, TextColumn, TimeElapsedColumn
 from rich.table import Table
 
@@ -15,10 +16,10 @@ from assess.decisions.results import RunRecord, SectionResult, Standing
 
 # Short enough for a table in 100 columns; the report has them in full.
 SHORT = {
-    Standing.MEETS: "meets it through the horizon",
-    Standing.MEETS_UNTIL: "meets it until {year}",
-    Standing.BELOW_LIMITABLE: "below; load x {factor:.2f} would meet it now",
-    Standing.BELOW: "below it now",
+    Standing.MEETS: "meets target through {last}",
+    Standing.MEETS_UNTIL: "meets target until {year}",
+    Standing.BELOW_LIMITABLE: "below; load x {factor:.2f} would meet it",
+    Standing.BELOW: "below target now",
 }
 
 
@@ -56,50 +57,76 @@ class RunScreen:
         with self._lock:
             if what not in self._tasks:
                 for task in self._tasks.values():
-                    self._progress.update(task, completed=1.0)  # type: ignore[arg-type]
+                    self._progress.update(task, total=1.0, completed=1.0)  # type: ignore[arg-type]
                 if not self._console.is_terminal:
                     self._console.print(what)
                 if what == "done":
                     return
-                self._tasks[what] = self._progress.add_task(what, total=1.0)
-            self._progress.update(self._tasks[what], completed=share)  # type: ignore[arg-type]
+                self._tasks[what] = self._progress.add_task(what, total=None)
+            if share > 0.0:  # until then the bar only shows that something goes on
+                self._progress.update(self._tasks[what], total=1.0, completed=share)  # type: ignore[arg-type]
 
     def show(self, record: RunRecord, report: Path) -> None:
         """Print the verdicts and where the report is."""
         console = self._console
         wanted = record.target
-        table = Table(title=f"{record.title}: sections, nothing done", title_justify="left")
-        for header in ("section", "index before", "index after", "5-95 %", "target", "verdict"):
-            table.add_column(
-                header, justify="left" if header in {"section", "verdict"} else "right"
-            )
         first, last = record.stages[0].name, record.stages[-1].name
-        for item in record.results:
-            if item.stage == last and item.option == LEAVE:
-                table.add_row(*_row(item, record.result(item.section, first), wanted.index))
+        kept = [r for r in record.results if (r.stage, r.option) == (last, LEAVE)]
+        table = Table(title=f"{record.title}: sections, nothing done", title_justify="left")
+        for header in ("section", "before", "after", "5-95 %", f"in {_last_year(kept)}", "verdict"):
+            side: JustifyMethod = "left" if header in {"section", "verdict"} else "right"
+            table.add_column(header, justify=side)
+        for item in kept:
+            table.add_row(*_row(item, record.result(item.section, first)))
         console.print(table)
+        end = f" to {record.assessed + wanted.period - 1}" if wanted.period > 1 else ""
         console.print(
-            f"Index of {wanted.period} year{'s' if wanted.period > 1 else ''} in "
-            f"{record.assessed}; target: {wanted.set_name}, {wanted.class_name}."
+            f"Reliability index of {record.assessed}{end}, before and after the surveys; 5-95 %: "
+            "range of the index were the variables known that a zone shares."
         )
+        console.print(
+            f"Target {wanted.index:.2f} for {_years(wanted.period)}: {wanted.set_name}, "
+            f"{wanted.class_name}."
+        )
+        for line in _options(record, last):
+            console.print(line)
         if record.accepted_unconverged:
             console.print("NOT CONVERGED: these figures must not be relied on.")
         if record.doubts:
-            console.print(f"{len(record.doubts)} doubtful data are listed in the report.")
+            console.print(f"Doubtful data: {len(record.doubts)}, listed in the report.")
         console.print(f"Report: {report}", soft_wrap=True)
 
 
-def _row(item: SectionResult, before: SectionResult, target: float) -> list[str]:
+def _years(count: int) -> str:
+    return "one year" if count == 1 else f"{count} years"
+
+
+def _last_year(results: Sequence[SectionResult]) -> int:
+    return int(results[0].reference.year[-1])
+
+
+def _row(item: SectionResult, before: SectionResult) -> list[str]:
     curve = item.reference
     verdict = item.verdict
     words = SHORT[verdict.standing].format(
-        year=verdict.crossing_year, factor=verdict.load_factor or 0.0
+        # `crossing_year` is the first year below
+        year=(verdict.crossing_year or 0) - 1,
+        last=int(curve.year[-1]),
+        factor=verdict.load_factor or 0.0,
     )
     return [
         item.section,
         f"{before.reference.index[0]:.2f}",
         f"{curve.index[0]:.2f} ± {curve.error[0]:.2f}",
         f"{curve.low[0]:.2f} to {curve.high[0]:.2f}",
-        f"{target:.2f}",
+        f"{curve.index[-1]:.2f}",
         words,
     ]
+
+
+def _options(record: RunRecord, stage: str) -> Iterator[str]:
+    """Say for each option how many sections meet the target."""
+    for name in dict.fromkeys(item.option for item in record.results if item.option != LEAVE):
+        kept = [item for item in record.results if (item.stage, item.option) == (stage, name)]
+        meeting = sum(item.verdict.standing is Standing.MEETS for item in kept)
+        yield f"{name}: {meeting} of {len(kept)} sections meet the target through the horizon."

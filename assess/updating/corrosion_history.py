@@ -1,7 +1,7 @@
 """Onset and rate of corrosion at a place, given what break-outs there found.
 
-The local onset is integrated out by a fixed quadrature over the years that the bar may have been
-corroding; given the onset, the local rate is lognormal and integrates in closed form.
+The local onset is integrated out by a quadrature that follows the zone's distribution of onsets;
+given the onset, the local rate is lognormal and integrates in closed form.
 """
 
 from collections.abc import Mapping, Sequence
@@ -18,7 +18,9 @@ from assess.updating import nested
 from assess.updating.kind import FloatArray, Numeric, Rows
 from assess.updating.local import Local
 
-NODES = 48  # Gauss-Legendre; tests compare with adaptive quadrature
+NODES = 56  # Gauss-Legendre, per stretch between visits; tests compare with adaptive quadrature
+GATHER = 6.0  # nodes resolve e^-GATHER of a stretch
+REACH = 6.0  # standard deviations of ln onset that the quadrature spans to each side
 OFF = 1e3  # stands for no bound on ln rate
 LEAST_AGE = 1e-12  # [yr] keeps logarithms finite; at it nothing has corroded
 LEAST = 1e-290  # keeps the logarithm of a likelihood finite
@@ -48,17 +50,14 @@ class Places:
     """What was found at each place, padded to the largest number of visits.
 
     ``log_last`` (n_place,) is ln of the age up to which the onset matters: the first visit that
-    found loss, else the last visit. ``log_onset``, ``log_weight`` (n_place, n_node) and
-    ``log_years`` (n_place, n_visit, n_node) tabulate the quadrature over the onset: ln onset,
-    ln weight [ln yr], ln of the years corroded at each visit. The others have shape (n_place,
-    n_visit); ``found`` and ``none`` are 1 where a visit found loss or found none, 0 at padding
-    and for later surveys.
+    found loss, else the last visit. The others have shape (n_place, n_visit). ``log_edge`` holds,
+    in order, ln of the ages of earlier visits that found none, then ``log_last`` to fill up:
+    between them the likelihood is smooth in the onset. ``found`` and ``none`` are 1 where a visit
+    found loss or found none, 0 at padding and for later surveys.
     """
 
     log_last: Any
-    log_onset: Any
-    log_weight: Any
-    log_years: Any
+    log_edge: Any
     age: Any  # of the structure at the visit [yr]
     found: Any
     none: Any
@@ -117,14 +116,10 @@ def places(rows: Rows, stage: int) -> Places:
     first_found = np.where(found > 0, age, np.inf).min(axis=1)
     last_none = np.where(none > 0, age, 1.0).max(axis=1)
     last = np.where(np.isfinite(first_found), first_found, last_none)
-    node, weight = np.polynomial.legendre.leggauss(NODES)
-    w, omega = 0.5 * (node + 1.0), 0.5 * weight
-    onset = last[:, None] * (1.0 - w * w)
+    edge = np.sort(np.where((none > 0) & (age < last[:, None]), age, last[:, None]), axis=1)
     return Places(
         log_last=np.log(last),
-        log_onset=np.log(onset),
-        log_weight=np.log(2.0 * last[:, None] * (w * omega)),
-        log_years=_log_years(age[:, :, None], onset[:, None, :]),
+        log_edge=np.log(edge),
         age=age,
         found=found,
         none=none,
@@ -135,19 +130,19 @@ def places(rows: Rows, stage: int) -> Places:
     )
 
 
-def _log_years(age: FloatArray, onset: FloatArray) -> FloatArray:
-    """Give ln of the years corroded at an age; far below any rate's reach before the onset."""
-    return np.log(np.maximum(age - onset, LEAST_AGE))
+def _years_at_visits(seen: Places, onset: Numeric) -> list[Numeric]:
+    """Give ln of the years corroded by each visit; far below any rate's reach before the onset."""
+    return [op.log(op.maximum(seen.age[:, k, None] - onset, LEAST_AGE)) for k in range(seen.visits)]
 
 
 def healed_places(rows: Rows) -> list[str]:
-    """Name the places where a later visit found no loss after an earlier one had found some."""
-    loss = np.isfinite(rows.value)
+    """Name the places where loss was found that a visit no earlier and no less keen denies."""
+    loss, age, limit = np.isfinite(rows.value), rows.extra["age"], rows.extra["limit"]
     healed = []
     for place, name in enumerate(rows.places):
-        here = rows.place == place
-        first_found = np.min(rows.extra["age"][here & loss], initial=np.inf)
-        if np.any(rows.extra["age"][here & ~loss] > first_found):
+        found = np.flatnonzero((rows.place == place) & loss)
+        none = np.flatnonzero((rows.place == place) & ~loss)
+        if np.any((age[none, None] >= age[found]) & (limit[none, None] <= limit[found])):
             healed.append(name)
     return healed
 
@@ -223,22 +218,42 @@ def log_likelihood(seen: Places, zone: Population) -> Numeric:
     .. math:: L = \int_0^T f(t_i)\, P(\text{findings} \mid t_i)\, dt_i
               + [1 - F(T)]\, 1[\text{no loss found}],
 
-    by Gauss-Legendre quadrature in w, :math:`t_i = T (1 - w^2)`: nodes gather where the bar has
-    corroded for a short time and the logarithm of that time varies fast. Towards
-    :math:`t_i = T` all derivatives of the integrand vanish, so the rule converges fast.
+    by Gauss-Legendre quadrature over the standard normal score z of :math:`\ln t_i`, whatever
+    the scatter of the onset. Each stretch between visits that found none, and up to T, is cut at
+    `REACH` and substituted by :math:`z = z_{end} - (z_{end} - z_{start}) (e^{g x} - 1)/(e^g -
+    1)`: nodes gather where the bar has corroded for a short time and the logarithm of that time
+    varies fast.
 
     References
     ----------
     .. [1] P. J. Davis, P. Rabinowitz, Methods of Numerical Integration, 2nd ed., 1984, ch. 2.
     """
-    rate = _rate_given_onset(seen, zone, [seen.log_years[:, k] for k in range(seen.visits)])
-    terms = _log_onset_density(zone, seen.log_onset) + seen.log_weight + rate.log_density
+    node, weight = np.polynomial.legendre.leggauss(NODES)
+    growth = np.exp(0.5 * GATHER * (node + 1.0))
+    before = (growth - 1.0) / np.expm1(GATHER)  # share of the stretch from its end to the node
+    share = 0.5 * GATHER * weight * growth / np.expm1(GATHER)
+    score_last = (seen.log_last[:, None] - zone.log_onset) / zone.onset_scatter
+    top = op.minimum(score_last, REACH)
+    start = op.minimum(top, 0.0) - REACH
+    stretches: list[tuple[Numeric, Numeric]] = []  # log-density, weight of each node
+    for k in range(seen.visits):
+        end = (seen.log_edge[:, k, None] - zone.log_onset) / zone.onset_scatter
+        end = op.maximum(op.minimum(end, top), start)
+        score = end - (end - start) * before
+        onset = op.exp(zone.log_onset + zone.onset_scatter * score)
+        rate = _rate_given_onset(seen, zone, _years_at_visits(seen, onset))
+        stretches.append(
+            (op.normal_logpdf(score) + rate.log_density, (end - start) * share * rate.window)
+        )
+        start = end
+    peak: Numeric = -500.0
+    for log_density, _ in stretches:
+        peak = op.maximum(peak, log_density.max(axis=1))
     found = seen.found.max(axis=1)
     known = op.maximum(found, seen.none.max(axis=1))
-    later = op.normal_cdf((zone.log_onset - seen.log_last[:, None]) / zone.onset_scatter)[:, 0]
-    peak = op.maximum(terms.max(axis=1), -500.0)
-    within = (op.exp(terms - peak[:, None]) * rate.window).sum(axis=1)
-    total = within + (1.0 - found) * later * op.exp(-peak)
+    total = (1.0 - found) * op.normal_cdf(-score_last)[:, 0] * op.exp(-peak)
+    for log_density, weight_here in stretches:
+        total = total + (op.exp(log_density - peak[:, None]) * weight_here).sum(axis=1)
     return op.where(known > 0.0, peak + op.log(op.maximum(total, LEAST)), 0.0)
 
 
@@ -292,11 +307,6 @@ def local_posterior(
             *bounds,
         ),
     )
-
-
-def _years_at_visits(seen: Places, onset: FloatArray) -> list[FloatArray]:
-    """Give ln of the years corroded by each visit to one place, visit by visit."""
-    return [_log_years(seen.age[:, k, None], onset) for k in range(seen.visits)]
 
 
 def _draw_tabulated(

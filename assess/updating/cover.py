@@ -100,18 +100,21 @@ class Cover(EvidenceKind):
             return None
         meters = self._meters(case)
         names = list(meters)
+        beyond = [item.table.beyond["cover"] for _, item in items]
         value = [item.table.numbers["cover"] for _, item in items]
         entries = [cast(CoverEntry, item.entry) for _, item in items]
         counts = [len(v) for v in value]
+        meter = [
+            np.full(n, float(names.index(entry.meter.name)))
+            for n, entry in zip(counts, entries, strict=True)
+        ]
         return build_rows(
             items,
             value,
             {
-                "beyond": [item.table.beyond["cover"] for _, item in items],
-                "meter": [
-                    np.full(n, float(names.index(entry.meter.name)))
-                    for n, entry in zip(counts, entries, strict=True)
-                ],
+                "beyond": beyond,
+                "reach": _reach(np.concatenate(meter), np.concatenate(beyond)),
+                "meter": meter,
                 "variance": [
                     np.full(n, entry.meter.scatter**2)
                     for n, entry in zip(counts, entries, strict=True)
@@ -159,14 +162,14 @@ class Cover(EvidenceKind):
         if len(limits):
             which = _limit_of_row(rows, limits, limit_group, groups)
             np.add.at(censored, which[beyond], 1.0)
-        shared = active & ~single & np.isfinite(rows.value)
-        chosen = ~single & np.isfinite(rows.value)
+        chosen = ~single
+        shared = active & np.isfinite(rows.value)
         return {
             "cover_count": count,
             "cover_mean": mean,
             "cover_square": square,
             "cover_censored": censored,
-            "cover_shared": rows.value[chosen],
+            "cover_shared": np.nan_to_num(rows.value)[chosen],
             "cover_shared_precision": np.where(shared, 1.0 / rows.extra["variance"], 0.0)[chosen],
         }
 
@@ -195,7 +198,7 @@ class Cover(EvidenceKind):
         if len(limits):
             excess = (centre[..., limit_group] - limits) / op.sqrt(total[..., limit_group])
             result = result + (data["cover_censored"] * op.log_normal_cdf(excess)).sum()
-        chosen = ~self._single(rows) & np.isfinite(rows.value)
+        chosen = ~self._single(rows)
         if chosen.any():
             zone_of = rows.zone[chosen]
             residual = (
@@ -230,11 +233,11 @@ class Cover(EvidenceKind):
         bias = _biases(values, rows.extra["meter"].astype(np.int64))
         error = np.sqrt(rows.extra["variance"]) * rng.standard_normal((draws, len(rows.value)))
         reading = local[:, rows.place] + bias + error
-        return np.where(reading > _row_limit(rows), np.nan, reading)
+        return np.where(reading > rows.extra["reach"], np.nan, reading)
 
     def observed(self, rows: Rows, value: FloatArray) -> Rows:
         """Put other readings in place of those of the rows; NaN is beyond the meter's range."""
-        beyond = np.where(np.isnan(value), _row_limit(rows), np.nan)
+        beyond = np.where(np.isnan(value), rows.extra["reach"], np.nan)
         return replace(rows, value=value, extra={**rows.extra, "beyond": beyond})
 
     def local(
@@ -304,7 +307,7 @@ def _group_variance(rows: Rows, groups: _Groups) -> FloatArray:
 
 def _limits(rows: Rows, groups: _Groups) -> tuple[FloatArray, IntArray]:
     """Distinct censoring limits with their groups."""
-    reach = _row_limit(rows)
+    reach = rows.extra["reach"]
     pairs = np.unique(
         np.column_stack([groups.of_row, reach])[np.isfinite(reach)].reshape(-1, 2), axis=0
     )
@@ -315,23 +318,18 @@ def _limit_of_row(
     rows: Rows, limits: FloatArray, limit_group: IntArray, groups: _Groups
 ) -> IntArray:
     """Index into the limits for each row that has one; 0 elsewhere."""
-    match = (groups.of_row[:, None] == limit_group) & (_row_limit(rows)[:, None] == limits)
+    match = (groups.of_row[:, None] == limit_group) & (rows.extra["reach"][:, None] == limits)
     return np.asarray(match.argmax(axis=1), dtype=np.int64)
 
 
-def _row_limit(rows: Rows) -> FloatArray:
-    """Limit at which each row is, or would be, censored; inf if none."""
-    beyond = rows.extra["beyond"]
-    return np.where(np.isfinite(beyond), beyond, _range(rows))
+def _reach(meter: FloatArray, beyond: FloatArray) -> list[FloatArray]:
+    """Give the cover at which each row is, or would be, censored; inf if never.
 
-
-def _range(rows: Rows) -> FloatArray:
-    """Largest readable cover of each row: the least limit that its meter shows; inf if none."""
-    reach = np.full(len(rows.value), np.inf)
-    meter = rows.extra["meter"]
+    A reading within the meter's range shares the least limit that the meter shows elsewhere.
+    """
+    reach = np.full(len(meter), np.inf)
     for m in np.unique(meter):
         mine = meter == m
-        beyond = rows.extra["beyond"][mine]
-        if np.isfinite(beyond).any():
-            reach[mine] = np.nanmin(beyond)
-    return reach
+        shown = beyond[mine & np.isfinite(beyond)]
+        reach[mine] = np.min(shown, initial=np.inf)
+    return [np.where(np.isfinite(beyond), beyond, reach)]

@@ -50,11 +50,11 @@ def build_model(spec: Spec, stage: int) -> Any:
     -------
     pymc.Model
         One free variable, ``whitened`` of dimension ``variable``; one Potential per kind of
-        evidence; the log-likelihood per draw as ``log_likelihood``. Replacing the data by those
-        of another stage needs no new compilation.
+        evidence. No deterministic variable: each would be compiled a second time, and physical
+        values follow from the draws (`JointPrior.physical`). Replacing the data by those of
+        another stage needs no new compilation.
     """
     import pymc as pm
-    import pytensor.tensor as pt
 
     with pm.Model(coords={"variable": list(spec.prior.names)}) as model:
         whitened = pm.Normal(WHITENED, 0.0, 1.0, dims="variable")
@@ -63,10 +63,6 @@ def build_model(spec: Spec, stage: int) -> Any:
             scores = pm.math.dot(spec.prior.cholesky, whitened)
         values = spec.prior.values([scores[i] for i in range(len(spec.prior.variables))])
         data = {name: pm.Data(name, array) for name, array in spec.data(stage).items()}
-        total: Any = 0.0
         for key, rows in spec.rows.items():
-            likelihood = KINDS[key].log_likelihood(rows, values, data)
-            pm.Potential(key, likelihood)
-            total = total + likelihood
-        pm.Deterministic("log_likelihood", pt.as_tensor(total))
+            pm.Potential(key, KINDS[key].log_likelihood(rows, values, data))
     return model

@@ -117,7 +117,7 @@ class NutpieSampler:
             progress_bar=False,
             progress_callback=report,
         )
-        return _chains(trace)
+        return _chains(trace, "logp")
 
 
 class PymcSampler:
@@ -157,16 +157,16 @@ class PymcSampler:
                 compute_convergence_checks=False,
                 callback=count,
             )
-        return _chains(trace)
+        return _chains(trace, "lp")
 
 
-def _chains(trace: Any) -> Chains:
-    posterior = trace["posterior"]
-    return Chains(
-        np.asarray(posterior[WHITENED].to_numpy(), dtype=np.float64),
-        np.asarray(posterior["log_likelihood"].to_numpy(), dtype=np.float64),
-        int(trace["sample_stats"]["diverging"].to_numpy().sum()),
-    )
+def _chains(trace: Any, log_density: str) -> Chains:
+    """Take the draws; the log-likelihood is the model's log-density less that of the prior."""
+    whitened = np.asarray(trace["posterior"][WHITENED].to_numpy(), dtype=np.float64)
+    statistics = trace["sample_stats"]
+    density = np.asarray(statistics[log_density].to_numpy(), dtype=np.float64)
+    prior = -0.5 * (whitened**2).sum(axis=-1) - 0.5 * whitened.shape[-1] * np.log(2.0 * np.pi)
+    return Chains(whitened, density - prior, int(statistics["diverging"].to_numpy().sum()))
 
 
 def diagnose(
@@ -199,9 +199,10 @@ def diagnose(
     chosen = [i for i in chosen if np.ptp(physical[..., i]) > 0.0]  # constants always converge
     draws = physical[..., chosen]
     axes = {"chain_axis": 0, "draw_axis": 1}
-    rhat = np.atleast_1d(array_stats.rhat(draws, **axes))
-    bulk = np.atleast_1d(array_stats.ess(draws, method="bulk", **axes))
-    tail = np.atleast_1d(array_stats.ess(draws, method="tail", prob=(0.05, 0.95), **axes))
+    with np.errstate(divide="ignore", invalid="ignore"):  # chains that never moved
+        rhat = np.atleast_1d(array_stats.rhat(draws, **axes))
+        bulk = np.atleast_1d(array_stats.ess(draws, method="bulk", **axes))
+        tail = np.atleast_1d(array_stats.ess(draws, method="tail", prob=(0.05, 0.95), **axes))
     failures = []
     for k, i in enumerate(chosen):
         faults = []

@@ -1,0 +1,24 @@
+"""The groups of checks that the verification consists of, in the order they are run."""
+
+from collections.abc import Callable, Iterable, Mapping
+from functools import partial
+from pathlib import Path
+
+from tests.verification.calibration import DESIGNS, calibrate
+from tests.verification.check import Check
+from tests.verification.first_order import first_order
+from tests.verification.formulas import formulas
+from tests.verification.strength import annex_d, normal_gamma
+
+Group = Callable[[Path], Iterable[Check]]  # takes a folder for its case files
+
+GROUPS: Mapping[str, Group] = {
+    "Formulas against published values": lambda _: formulas(),
+    "Textbook reliability examples": lambda _: first_order(),
+    "Normal-gamma updating by six cores": normal_gamma,
+    "Factors of EN 1990 annex D through the Markov chains": annex_d,
+    **{
+        f"Simulation-based calibration: {design.kind.replace('_', ' ')}": partial(calibrate, design)
+        for design in DESIGNS
+    },
+}
