@@ -492,7 +492,6 @@ def test_accepted_run_is_marked_and_not_accepted_twice(
         go(accepted)
 
 
-@pytest.mark.xfail(reason="summary.csv has no mark of an accepted run yet", strict=True)
 def test_accepted_run_is_marked_in_the_summary(accepted: Path) -> None:
     with (accepted / "reports" / "b" / store.SUMMARY).open(encoding="utf-8", newline="") as stream:
         rows = [row for row in csv.DictReader(stream) if row["stage"] == AFTER and row["target"]]

@@ -107,7 +107,7 @@ def find_modes(problem: Problem, year: int) -> tuple[FloatArray, int]:
         nonlocal spent
         spent += z.shape[0] * z.shape[1]
         value = log_failure(problem.log_hazard(z, chosen, years)[..., 0])
-        return value - 0.5 * np.einsum("...i,...i->...", z, z)
+        return np.asarray(value - 0.5 * np.einsum("...i,...i->...", z, z))
 
     scouts = np.concatenate(
         [
@@ -173,8 +173,10 @@ def draw_sample(
     """
     count = len(centres)
     shape = (replicates, problem.draws, points * count)
-    z = normal_points(problem.dimension, problem.draws * points * count, seed, replicates)
-    z = z.reshape(*shape, problem.dimension)
+    # One sequence for each centre: dealt out by turns, a single one would alias with its bits.
+    z = normal_points(problem.dimension, problem.draws * points, seed, replicates * count)
+    z = z.reshape(replicates, count, problem.draws, points, problem.dimension)
+    z = np.moveaxis(z, 1, 3).reshape(*shape, problem.dimension)
     for number, centre in enumerate(centres):
         z[:, :, number::count] += centre[None, :, None, :]
     log_mixture = np.full(shape, -np.inf)

@@ -113,7 +113,7 @@ def probabilities(
 
 
 def batch_means_error(series: FloatArray, chains: int) -> FloatArray:
-    """Standard error of the mean of chains, by batch means within each chain.
+    """Estimate the standard error of the mean of chains, by batch means within each chain.
 
     Parameters
     ----------

@@ -104,7 +104,9 @@ def result_verdict(record: RunRecord, result: SectionResult) -> str:
     """Write a result's verdict, or that it is withheld."""
     if derived.withheld(record, result.stage):
         return WITHHELD
-    return verdict_words(result.verdict, derived.last_year(record))
+    said = verdict_words(result.verdict, derived.last_year(record))
+    failed = {item.name for item in derived.unconverged(record)}
+    return f"{said} (not converged)" if result.stage in failed else said
 
 
 def unconverged_words(record: RunRecord) -> str:

@@ -41,7 +41,7 @@ class StageDraws:
     @property
     def chains(self) -> int:
         """Number of chains."""
-        return self.physical.shape[0]
+        return int(self.physical.shape[0])
 
     def values(self) -> dict[str, FloatArray]:
         """Draws by variable name, chains one after the other, each (chain * draw,)."""
@@ -181,4 +181,5 @@ def _sample_once(
 
 def _stage_seed(seed: int, number: int) -> int:
     """Derive a stage's seed; neighbouring case seeds give unrelated streams."""
-    return int(np.random.SeedSequence([seed, number]).generate_state(1).item())
+    state: int = np.random.SeedSequence([seed, number]).generate_state(1).item()
+    return state
