@@ -52,8 +52,11 @@ def reading() -> CaseReading:
 
 
 def _cells(path: Path) -> list[tuple[object, ...]]:
-    sheet = openpyxl.load_workbook(path, read_only=True).worksheets[0]
-    return list(sheet.iter_rows(values_only=True))
+    book = openpyxl.load_workbook(path, read_only=True)
+    try:
+        return list(book.worksheets[0].iter_rows(values_only=True))
+    finally:
+        book.close()
 
 
 def _readme_rows(first_cell: str) -> list[list[str]]:
