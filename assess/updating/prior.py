@@ -26,8 +26,8 @@ FloatArray = NDArray[np.float64]
 # Of a prior that leaves the cores to speak: ln(median) about 30 MPa and ln(scatter) about 0.15
 # with standard deviations so large that a few cores swamp them; the densities approach the
 # 1/sigma that EN 1990 annex D stands on.
-VAGUE_LEVEL_SD = 10.0
-VAGUE_SCATTER_SD = 10.0
+VAGUE_LEVEL_SD = 5.0
+VAGUE_SCATTER_SD = 5.0
 COVER_MEAN_SD = 5.0  # [mm] JCSS part 3.10: mean deviation of beams, slabs within some 10 mm
 COVER_SCATTER = (7.5, 0.25)  # [mm], V. JCSS part 3.10: standard deviation 5 to 10 mm
 COVER_SOURCE = "JCSS Probabilistic Model Code, part 3.10, cover; ranges put as distributions"
