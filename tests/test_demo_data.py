@@ -2,6 +2,7 @@
 
 import importlib.util
 import re
+import sys
 from dataclasses import astuple
 from pathlib import Path
 from types import ModuleType
@@ -34,7 +35,7 @@ def script() -> ModuleType:
     module = importlib.util.module_from_spec(place)
     with pytest.MonkeyPatch.context() as patch:
         # Dataclasses look their module up by name while it is executed.
-        patch.setitem(__import__("sys").modules, "make_tables", module)
+        patch.setitem(sys.modules, "make_tables", module)
         place.loader.exec_module(module)
     return module
 

@@ -124,7 +124,7 @@ def without_dependence(state: SectionState, case: Case, spec: Spec, seed: int) -
         # Without measurements of its own the section follows its (permuted) zone.
         shuffled |= kind.local(None, 0, state.entry.name, state.entry.zone, common, rng)
     count = len(next(iter(common.values())))
-    for name in state.measured:
+    for name in sorted(state.measured):  # a set has no order that a seed fixes
         shuffled[name] = state.locals[name].take(rng.permutation(count))
     return SectionState(state.entry, shuffled, common, state.measured)
 
