@@ -40,7 +40,12 @@ LEAVE_WORDS = "leave as is"
 
 def stage_words(record: RunRecord, stage: str) -> str:
     """Name a state of knowledge in a sentence."""
-    return f"before ({stage})" if stage == record.stages[0].name else f"after {stage}"
+    return f"before ({stage})" if stage == record.stages[0].name else _after(stage)
+
+
+def _after(stage: str) -> str:
+    """Say "after" once, also where the survey's own name begins with it."""
+    return stage if stage.casefold().startswith("after ") else f"after {stage}"
 
 
 def stage_heading(record: RunRecord, stage: str) -> str:
@@ -57,7 +62,7 @@ def stage_key(record: RunRecord, stage: str) -> str:
     for item in record.stages:
         if item.name == stage and item.date and same_year[item.date[:4]] == 1:
             return f"after {item.date[:4]}"
-    return f"after {stage}"
+    return _after(stage)
 
 
 def option_words(option: str) -> str:

@@ -1,3 +1,5 @@
+from dataclasses import replace
+
 import pytest
 from scipy.special import ndtr
 
@@ -33,3 +35,10 @@ def test_prior_is_described_without_chains(record: RunRecord) -> None:
     text = words.stage_diagnosis(record, record.stages[0])
     assert text.startswith("Before (prior): 4\u202f000 draws")
     assert "R-hat" not in text
+
+
+def test_a_survey_named_after_something_is_not_said_after_twice(record: RunRecord) -> None:
+    named = replace(record.stages[-1], name="after 2025")
+    renamed = replace(record, stages=[*record.stages[:-1], named])
+    assert words.stage_words(renamed, "after 2025") == "after 2025"
+    assert words.stage_words(renamed, "spring visit") == "after spring visit"
