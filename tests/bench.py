@@ -84,7 +84,7 @@ def bench_section() -> str:
     seconds, worst = [], 0.0
     for entry in case.spec.sections().values():
         begun = time.perf_counter()
-        state = section_state(case, spec, entry, 0, draws.values(), settings.seed)
+        state = section_state(case, spec, entry, 0, draws.values())
         found = section_reliability(
             case, state, Action(), 1, Precision(settings.chains, 0.01, settings.seed)
         )

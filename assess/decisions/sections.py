@@ -2,7 +2,7 @@
 
 from collections.abc import Iterator, Mapping, Sequence
 from concurrent.futures import Executor, Future
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,6 +12,7 @@ from assess.case.reader import Case
 from assess.decisions.options import LEAVE, OPTIONS
 from assess.decisions.results import SectionResult, Target, Verdict
 from assess.decisions.verdicts import verdict
+from assess.reliability.importance import Proposal
 from assess.reliability.index import probability_from_index
 from assess.reliability.limit_state import Action
 from assess.reliability.problem import (
@@ -123,33 +124,46 @@ def _section(
     final: bool,
 ) -> list[SectionResult]:
     """Give results of one section: `leave`, then at the last stage each option."""
-    state = section_state(case, spec, entry, draws.number, values, question.seed)
-    dropped = without_dependence(state, case, spec, question.seed) if final else None
-    results = [_result(case, state, dropped, draws.name, LEAVE, Action(), question)]
+    state = section_state(case, spec, entry, draws.number, values)
+    left = _reliability(case, state, Action(), question)
+    results = [_result(case, state, draws.name, LEAVE, left, question)]
     if final:
+        dropped = _reliability(case, without_dependence(state, question.seed), Action(), question)
+        results[0] = replace(
+            results[0],
+            independent=dropped.reference,
+            verdict_independent=_judge(dropped, question, results[0].verdict.governing),
+        )
         for name, action in actions(case, entry.name).items():
-            results.append(_result(case, state, None, draws.name, name, action, question))
+            # On the same points: what differs between options is then not noise.
+            found = _reliability(case, state, action, question, left.proposal)
+            results.append(_result(case, state, draws.name, name, found, question))
     return results
+
+
+def _reliability(
+    case: Case,
+    state: SectionState,
+    action: Action,
+    question: Question,
+    proposal: Proposal | None = None,
+) -> SectionReliability:
+    return section_reliability(
+        case, state, action, question.target.period, question.precision, proposal
+    )
 
 
 def _result(
     case: Case,
     state: SectionState,
-    dropped: SectionState | None,
     stage: str,
     option: str,
-    action: Action,
+    found: SectionReliability,
     question: Question,
 ) -> SectionResult:
-    """Integrate one section under one option and judge it."""
-    period = question.target.period
-    found = section_reliability(case, state, action, period, question.precision)
+    """Judge one section under one option."""
     sensitivities = section_sensitivities(state, found)
     governing = next(iter(sensitivities), "")
-    judged = _judge(found, question, governing)
-    independent = None
-    if dropped is not None:
-        independent = section_reliability(case, dropped, action, period, question.precision)
     return SectionResult(
         section=state.entry.name,
         member=member_of(case, state.entry.name),
@@ -159,11 +173,9 @@ def _result(
         annual=found.annual,
         cumulative=found.cumulative,
         reference=found.reference,
-        independent=None if independent is None else independent.reference,
-        verdict=judged,
-        verdict_independent=(
-            None if independent is None else _judge(independent, question, governing)
-        ),
+        independent=None,
+        verdict=_judge(found, question, governing),
+        verdict_independent=None,
         sensitivities=sensitivities,
         evaluations=found.evaluations,
         note=_note(found, question.precision.tolerance),

@@ -26,8 +26,12 @@ IntArray = NDArray[np.int64]
 LogHazard = Callable[[FloatArray, IntArray, IntArray], FloatArray]
 
 STEP = 1e-3  # of the finite differences, in standard normal units
-SCOUTS = 32  # points from which the search of each mode may start
-ITERATIONS = 4
+AXIS_SCOUT = 2.5  # distance of the scouts on the axes, in standard normal units
+CLOUD_SCOUT = 1.5  # scatter of the other scouts
+CLOUD = 16  # number of those
+ITERATIONS = 5
+SHARES = np.array([0.0, 0.05, 0.2, 0.5, 1.0])  # of the way to the linear form's maximum
+BISECTIONS = 30
 ELEMENTS = 400_000  # capacity evaluations held in memory at a time
 
 
@@ -43,24 +47,66 @@ class Problem:
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class Sample:
-    """Weighted sample of the joint space of draws and local variables.
+class Proposal:
+    """Where to sample: centres for each draw, and how many points each draw gets.
 
     Attributes
     ----------
-    z : ndarray, shape (n_replicate, n_draw, n_point, dimension)
-    weight : ndarray, shape (n_replicate, n_draw, n_point)
-        Density ratio, mean 1 in expectation.
-    hazard : ndarray, shape (n_replicate, n_draw, n_point, n_year)
-        Lambda of each year.
-    evaluations : int
-        Capacity evaluations spent, those of the mode search included.
+    centres : tuple of ndarray, each (n_draw, dimension)
+        Centres of a mixture of unit normals with equal shares.
+    points : ndarray of int, shape (n_draw,)
+        Points per draw, replicate and centre, at least 1.
+    seed : int
+        Of the scrambled points; equal proposals give equal points (common random numbers).
     """
 
+    centres: tuple[FloatArray, ...]
+    points: IntArray
+    seed: int
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sample:
+    """Weighted sample of the joint space of draws and local variables.
+
+    Points of one draw follow one another: ``owner`` is ascending.
+
+    Attributes
+    ----------
+    owner : ndarray of int, shape (n_point,)
+        Draw that a point belongs to, the same in every replicate and centre.
+    z : ndarray, shape (n_replicate, n_centre, n_point, dimension)
+    weight : ndarray, shape (n_replicate, n_centre, n_point)
+        Adds up to 1 in each replicate in expectation, and to 1/n_draw over each draw.
+    hazard : ndarray, shape (n_replicate, n_centre, n_point, n_year)
+        Lambda of each year.
+    draws : int
+        Number of draws.
+    evaluations : int
+        Capacity evaluations spent on it.
+    """
+
+    owner: IntArray
     z: FloatArray
     weight: FloatArray
     hazard: FloatArray
+    draws: int
     evaluations: int
+
+    def per_draw(self, value: FloatArray) -> FloatArray:
+        """Sum a value over the points of each draw and over the centres.
+
+        Parameters
+        ----------
+        value : ndarray, shape (n_centre, n_point, ...)
+            Of one replicate.
+
+        Returns
+        -------
+        ndarray, shape (n_draw, ...)
+        """
+        starts = np.searchsorted(self.owner, np.arange(self.draws))
+        return np.asarray(np.add.reduceat(value.sum(axis=0), starts, axis=0))
 
 
 def log_failure(log_hazard: FloatArray) -> FloatArray:
@@ -70,7 +116,9 @@ def log_failure(log_hazard: FloatArray) -> FloatArray:
     return np.where(small, log_hazard, np.log(-np.expm1(-np.where(small, 1.0, hazard))))
 
 
-def find_modes(problem: Problem, year: int) -> tuple[FloatArray, int]:
+def find_modes(
+    problem: Problem, year: int, starts: Sequence[FloatArray] = ()
+) -> tuple[FloatArray, FloatArray, int]:
     """Find for each draw where failing in a year is most likely to come from.
 
     Parameters
@@ -79,89 +127,158 @@ def find_modes(problem: Problem, year: int) -> tuple[FloatArray, int]:
         What to integrate.
     year : int
         Index of the year.
+    starts : sequence of ndarray, each (n_draw, dimension)
+        Where to start from besides the origin and the best of the scouts.
 
     Returns
     -------
     tuple
-        Approximate maxima of ln P(fail in the year | draw, z) - |z|^2/2, shape (n_draw,
-        dimension), and the evaluations spent. They centre a proposal density, so they need not
-        be exact; a poor one costs accuracy, which the error estimate shows, never bias.
+        Where ln P(fail in the year | draw, z) - |z|^2/2 is largest, shape (n_draw, dimension),
+        its value there (n_draw,), and the evaluations spent. The places centre a proposal
+        density, so they need not be exact; a poor one costs accuracy, never bias.
 
     Notes
     -----
-    Scouts, scrambled Sobol points of 1.5 times the standard scatter, start the search off a
-    plateau (a bar that has not begun to corrode has no gradient in its onset). A few steps
-    z -> z + t (gradient - z) follow, with t the best of three; for a log-probability linear in
-    z the step t = 1 is exact. Forward differences give the gradient.
+    Each iteration linearises ln Lambda, whose forward differences give its gradient, jumps to the
+    maximum that the linear form has, as the first-order search of the design point does [1]_,
+    and goes as much of that way as the true objective likes best. Scouts lead off a plateau (a
+    bar that has not begun to corrode has no gradient in its onset): points on every axis, and
+    scrambled Sobol points.
 
     References
     ----------
-    .. [1] R. E. Melchers, A. T. Beck, Structural Reliability Analysis and Prediction, 3rd ed.,
+    .. [1] R. Rackwitz, B. Fiessler, Structural reliability under combined random load sequences,
+       Comput. Struct. 9 (1978) 489-494, doi:10.1016/0045-7949(78)90046-9.
+    .. [2] R. E. Melchers, A. T. Beck, Structural Reliability Analysis and Prediction, 3rd ed.,
        2018, section 3.4 (importance sampling centred at the maximum of the integrand).
     """
     years = np.array([year])
     draws = np.arange(problem.draws)
     spent = 0
 
-    def objective(z: FloatArray, chosen: IntArray) -> FloatArray:
+    def log_hazard(z: FloatArray, chosen: IntArray) -> FloatArray:
         nonlocal spent
         spent += z.shape[0] * z.shape[1]
-        value = log_failure(problem.log_hazard(z, chosen, years)[..., 0])
-        return np.asarray(value - 0.5 * np.einsum("...i,...i->...", z, z))
+        return problem.log_hazard(z, chosen, years)[..., 0]
 
-    scouts = np.concatenate(
-        [
-            np.zeros((1, problem.dimension)),
-            1.5 * normal_points(problem.dimension, SCOUTS - 1, seed=7)[0],
-        ]
-    )
-    mode = np.empty((problem.draws, problem.dimension))
-    for part in np.array_split(draws, max(1, problem.draws * SCOUTS // ELEMENTS)):
+    scouts = _scouts(problem.dimension)
+    best = np.empty((problem.draws, problem.dimension))
+    for part in np.array_split(draws, max(1, problem.draws * len(scouts) // ELEMENTS)):
         cloud = np.broadcast_to(scouts, (len(part), *scouts.shape))
-        mode[part] = scouts[objective(cloud, part).argmax(axis=1)]
-    offsets = np.concatenate([np.zeros((1, problem.dimension)), STEP * np.eye(problem.dimension)])
-    steps = np.array([0.0, 0.3, 1.0])
-    for part in np.array_split(draws, max(1, problem.draws * len(offsets) // ELEMENTS)):
-        for _ in range(ITERATIONS):
-            around = objective(mode[part, None, :] + offsets, part)
-            slope = (around[:, 1:] - around[:, :1]) / STEP
-            # Steps longer than 4 leave the region where the slope means anything.
-            length = np.linalg.norm(slope, axis=1, keepdims=True)
-            slope *= np.minimum(1.0, 4.0 / np.maximum(length, 1e-12))
-            tried = mode[part, None, :] + steps[:, None] * slope[:, None, :]
-            best = objective(tried, part).argmax(axis=1)
-            mode[part] = tried[np.arange(len(part)), best]
-    return mode, spent
+        best[part] = scouts[_height(log_hazard(cloud, part), cloud).argmax(axis=1)]
+    mode = np.zeros((problem.draws, problem.dimension))
+    peak = np.full(problem.draws, -np.inf)
+    around = problem.dimension + 1
+    for start in (np.zeros_like(best), best, *starts):
+        for part in np.array_split(draws, max(1, problem.draws * around // ELEMENTS)):
+            found, height = _climb(log_hazard, start[part], part)
+            higher = height > peak[part]
+            mode[part] = np.where(higher[:, None], found, mode[part])
+            peak[part] = np.where(higher, height, peak[part])
+    return mode, peak, spent
 
 
-def draw_sample(
-    problem: Problem, centres: Sequence[FloatArray], points: int, replicates: int, seed: int
-) -> Sample:
+def _scouts(dimension: int) -> FloatArray:
+    """Points that look for failure away from the origin."""
+    axes = AXIS_SCOUT * np.eye(dimension)
+    cloud = CLOUD_SCOUT * normal_points(dimension, CLOUD, seed=7)[0]
+    return np.concatenate([axes, -axes, cloud])
+
+
+def _height(log_hazard: FloatArray, z: FloatArray) -> FloatArray:
+    """Log of the integrand: of failing at z, and of z itself up to a constant."""
+    return np.asarray(log_failure(log_hazard) - 0.5 * np.einsum("...i,...i->...", z, z))
+
+
+def _climb(
+    log_hazard: Callable[[FloatArray, IntArray], FloatArray], start: FloatArray, part: IntArray
+) -> tuple[FloatArray, FloatArray]:
+    """Climb from the starts of some draws to where the integrand is largest."""
+    dimension = start.shape[1]
+    offsets = np.concatenate([np.zeros((1, dimension)), STEP * np.eye(dimension)])
+    mode = start
+    for _ in range(ITERATIONS):
+        around = log_hazard(mode[:, None, :] + offsets, part)
+        slope = (around[:, 1:] - around[:, :1]) / STEP
+        target = _linear_maximum(around[:, 0], slope, mode)
+        tried = mode[:, None, :] + SHARES[:, None] * (target - mode)[:, None, :]
+        height = _height(log_hazard(tried, part), tried)
+        best = height.argmax(axis=1)
+        row = np.arange(len(part))
+        mode, peak = tried[row, best], height[row, best]
+    return mode, peak
+
+
+def _linear_maximum(log_hazard: FloatArray, slope: FloatArray, z: FloatArray) -> FloatArray:
+    r"""Give the maximum of the integrand were ln Lambda linear.
+
+    It lies on the gradient a, at the distance s where :math:`|a| r(g) = s` with g = ln Lambda
+    there and :math:`r = e^g / (e^{e^g} - 1)` the slope of :math:`\ln(1 - e^{-e^g})`; found by
+    bisection between 0 and |a|, for r falls from 1 to 0.
+    """
+    steepness = np.linalg.norm(slope, axis=1)
+    unit = slope / np.maximum(steepness, 1e-300)[:, None]
+    at_origin = log_hazard - np.einsum("ni,ni->n", slope, z)
+    low, high = np.zeros_like(steepness), steepness
+    for _ in range(BISECTIONS):
+        middle = 0.5 * (low + high)
+        hazard = np.exp(np.clip(at_origin + steepness * middle, -700.0, 6.0))
+        further = steepness * hazard / np.expm1(hazard) > middle
+        low, high = np.where(further, middle, low), np.where(further, high, middle)
+    return np.asarray(low[:, None] * unit)
+
+
+def allocate(contribution: FloatArray, total: int) -> IntArray:
+    """Share points out among draws by what each contributes to the failure probability.
+
+    Parameters
+    ----------
+    contribution : ndarray, shape (n_draw, n_year)
+        Non-negative; any scale in each year.
+    total : int
+        Points to be shared out, at least n_draw.
+
+    Returns
+    -------
+    ndarray of int, shape (n_draw,)
+        At least 1 for each draw, the rest in proportion to the largest share that the draw has
+        in any year: optimal allocation where the relative scatter within draws is alike [1]_.
+
+    References
+    ----------
+    .. [1] W. G. Cochran, Sampling Techniques, 3rd ed., 1977, section 5.5 (Neyman allocation).
+    """
+    sums = contribution.sum(axis=0)
+    usable = sums > 0.0
+    count = len(contribution)
+    if not usable.any():
+        return np.full(count, max(1, total // count), dtype=np.int64)
+    share = (contribution[:, usable] / sums[usable]).max(axis=1)
+    return np.asarray(1 + np.floor((total - count) * share / share.sum()), dtype=np.int64)
+
+
+def draw_sample(problem: Problem, proposal: Proposal, replicates: int) -> Sample:
     """Sample local variables around the centres of each draw, with their weights and hazards.
 
     Parameters
     ----------
     problem : Problem
         What to integrate.
-    centres : sequence of ndarray, each (n_draw, dimension)
-        Centres of the proposal, a mixture of unit normals with equal shares.
-    points : int
-        Points per draw, replicate and centre.
+    proposal : Proposal
+        Where to sample.
     replicates : int
         Independently scrambled repetitions, for the integration error.
-    seed : int
-        Of the scrambling; equal seeds give equal points (common random numbers).
 
     Returns
     -------
     Sample
-        With ``points * len(centres)`` points per draw and replicate.
+        With a point at each centre for each point of the proposal.
 
     Notes
     -----
-    Each replicate runs one scrambled Sobol sequence through all draws, so that points differ
-    from draw to draw and are evenly spread over the draws together [1]_. The weight is the
-    standard normal density over that of the whole mixture (balance heuristic [2]_), bounded
+    Each replicate runs one scrambled Sobol sequence per centre through all draws, so that points
+    differ from draw to draw and are evenly spread over the draws together [1]_. The weight is
+    the standard normal density over that of the whole mixture (balance heuristic [2]_), bounded
     wherever any centre covers.
 
     References
@@ -171,34 +288,35 @@ def draw_sample(
     .. [2] E. Veach, L. J. Guibas, Optimally combining sampling techniques for Monte Carlo
        rendering, SIGGRAPH 1995, 419-428, doi:10.1145/218380.218498.
     """
-    count = len(centres)
-    shape = (replicates, problem.draws, points * count)
+    count = len(proposal.centres)
+    owner = np.repeat(np.arange(problem.draws), proposal.points)
     # One sequence for each centre: dealt out by turns, a single one would alias with its bits.
-    z = normal_points(problem.dimension, problem.draws * points, seed, replicates * count)
-    z = z.reshape(replicates, count, problem.draws, points, problem.dimension)
-    z = np.moveaxis(z, 1, 3).reshape(*shape, problem.dimension)
-    for number, centre in enumerate(centres):
-        z[:, :, number::count] += centre[None, :, None, :]
-    log_mixture = np.full(shape, -np.inf)
-    for centre in centres:
-        away = z - centre[None, :, None, :]
+    z = normal_points(problem.dimension, len(owner), proposal.seed, replicates * count)
+    z = z.reshape(replicates, count, len(owner), problem.dimension)
+    for number, centre in enumerate(proposal.centres):
+        z[:, number] += centre[owner]
+    log_mixture = np.full(z.shape[:-1], -np.inf)
+    for centre in proposal.centres:
+        away = z - centre[owner]
         np.logaddexp(log_mixture, -0.5 * np.einsum("...i,...i->...", away, away), out=log_mixture)
-    weight = count * np.exp(-0.5 * np.einsum("...i,...i->...", z, z) - log_mixture)
-    hazard = np.empty((*shape, problem.years))
+    weight = np.exp(-0.5 * np.einsum("...i,...i->...", z, z) - log_mixture)
+    weight /= proposal.points[owner] * problem.draws
+    hazard = np.empty((*z.shape[:-1], problem.years))
     years = np.arange(problem.years)
-    per_draw = points * count * problem.years
     for part in np.array_split(
-        np.arange(problem.draws), max(1, problem.draws * per_draw // ELEMENTS)
+        np.arange(len(owner)), max(1, len(owner) * problem.years // ELEMENTS)
     ):
         for replicate in range(replicates):
-            # Beyond e^50 failure is certain; the bound keeps sums over years finite.
-            hazard[replicate, part] = np.exp(
-                np.minimum(problem.log_hazard(z[replicate, part], part, years), 50.0)
-            )
-    return Sample(z, weight, hazard, int(np.prod(shape)) * problem.years)
+            for number in range(count):
+                log_hazard = problem.log_hazard(
+                    z[replicate, number, part, None], owner[part], years
+                )[:, 0]
+                # Beyond e^50 failure is certain; the bound keeps sums over years finite.
+                hazard[replicate, number, part] = np.exp(np.minimum(log_hazard, 50.0))
+    return Sample(owner, z, weight, hazard, problem.draws, hazard.size)
 
 
-@lru_cache(maxsize=16)
+@lru_cache(maxsize=2)
 def _uniform_points(dimension: int, count: int, seed: int, replicates: int) -> FloatArray:
     """Scrambled Sobol points, (replicates, count, dimension)."""
     size = 1 << max(0, int(np.ceil(np.log2(count))))

@@ -5,14 +5,22 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from assess.reliability.importance import Problem, Sample, draw_sample, find_modes
+from assess.reliability.importance import (
+    Problem,
+    Proposal,
+    Sample,
+    allocate,
+    draw_sample,
+    find_modes,
+)
 from assess.reliability.index import index_error, index_from_probability
 
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
 
 REPLICATES = 4
-MOST_POINTS = 64  # per draw, replicate and centre
+FIRST_POINTS = 2  # per draw, replicate and centre, on average, in the first pass
+MOST_ELEMENTS = 16_000_000  # hazards held at a time: replicates, centres, points, years
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,6 +52,16 @@ class Probabilities:
         # Weights average to 1 only in the mean, so a near certain failure may come out above 1.
         bounded = np.minimum(self.conditional, 1.0)
         return np.asarray(index_from_probability(np.quantile(bounded, 1.0 - share, axis=0)))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Integral:
+    """What integrating one section gave."""
+
+    sample: Sample
+    annual: Probabilities  # of each year
+    proposal: Proposal  # that the sample was drawn from
+    evaluations: int  # of the capacity, mode search and earlier passes included
 
 
 def windows(years: int, period: int) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
@@ -82,21 +100,19 @@ def probabilities(
     .. [1] J. M. Flegal, G. L. Jones, Batch means and spectral variance estimators in Markov
        chain Monte Carlo, Ann. Statist. 38 (2010) 1034-1070, doi:10.1214/09-AOS735.
     """
-    replicates, draws = sample.weight.shape[:2]
-    by_replicate = np.empty((replicates, draws, len(first)))
+    replicates = len(sample.weight)
+    by_replicate = np.empty((replicates, sample.draws, len(first)))
     annual = bool(np.array_equal(first, last))
     for replicate in range(replicates):
         hazard = sample.hazard[replicate]
         if annual:
             within = hazard[..., last]
         else:
-            total = np.concatenate(
-                [np.zeros((*hazard.shape[:2], 1)), np.cumsum(hazard, axis=-1)], axis=-1
-            )
+            start = np.zeros((*hazard.shape[:-1], 1))
+            total = np.concatenate([start, np.cumsum(hazard, axis=-1)], axis=-1)
             within = total[..., last + 1] - total[..., first]
-        failing = -np.expm1(-within)
-        by_replicate[replicate] = np.einsum("dp,dpy->dy", sample.weight[replicate], failing)
-    by_replicate /= sample.weight.shape[2]
+        failing = -np.expm1(-within) * sample.weight[replicate, ..., None]
+        by_replicate[replicate] = sample.draws * sample.per_draw(failing)
     conditional = by_replicate.mean(axis=0)
     probability = conditional.mean(axis=0)
     means = by_replicate.mean(axis=1)
@@ -136,8 +152,8 @@ def batch_means_error(series: FloatArray, chains: int) -> FloatArray:
 
 
 def integrate(
-    problem: Problem, *, chains: int, tolerance: float, seed: int
-) -> tuple[Sample, Probabilities]:
+    problem: Problem, *, chains: int, tolerance: float, seed: int, proposal: Proposal | None = None
+) -> Integral:
     """Sample until the annual index of every year is integrated to the tolerance.
 
     Parameters
@@ -150,29 +166,65 @@ def integrate(
         Largest standard error of the index from integration.
     seed : int
         Of the Sobol scrambling.
+    proposal : Proposal, optional
+        Where to sample first, from the integral of a problem that differs in an option only:
+        both then see the same points. Left out, the modes are searched.
 
     Returns
     -------
-    tuple
-        The sample and the annual probabilities. When `MOST_POINTS` do not reach the tolerance
-        the result carries the larger error; the caller says so.
+    Integral
+        When `MOST_ELEMENTS` do not suffice for the tolerance the result carries the larger
+        error; the caller says so.
+
+    Notes
+    -----
+    Each pass shares twice as many points out among the draws as the pass before, by what that
+    one found each draw to contribute; it takes points of its own, so that where they lie does
+    not depend on what they find.
     """
-    # The standard normal density itself bounds the weights wherever the modes do not reach.
-    centres, spent = [np.zeros((problem.draws, problem.dimension))], 0
-    for year in sorted({0, problem.years - 1}):
-        mode, evaluations = find_modes(problem, year)
-        centres.append(mode)
-        spent += evaluations
-    points = 1
+    spent = 0
+    if proposal is None:
+        proposal, spent = first_proposal(problem, seed)
     first, last = windows(problem.years, 1)
     while True:
-        sample = draw_sample(problem, centres, points, REPLICATES, seed)
+        sample = draw_sample(problem, proposal, REPLICATES)
         spent += sample.evaluations
         annual = probabilities(sample, first, last, chains)
         # Where failure is more likely than not, the third digit of a negative index decides
         # nothing; its error is reported all the same.
         open_question = annual.index > 0.0
         worst = np.max(annual.integration_error[open_question], initial=0.0)
-        if worst <= tolerance or 2 * points > MOST_POINTS:
-            return Sample(sample.z, sample.weight, sample.hazard, spent), annual
-        points *= 2
+        points = 2 * len(sample.owner)
+        elements = REPLICATES * len(proposal.centres) * points * problem.years
+        if worst <= tolerance or elements > MOST_ELEMENTS:
+            return Integral(sample, annual, proposal, spent)
+        proposal = Proposal(
+            proposal.centres, allocate(annual.conditional, points), proposal.seed + 1
+        )
+
+
+def first_proposal(problem: Problem, seed: int) -> tuple[Proposal, int]:
+    """Centre on the modes of the first and last year; give each draw points by their heights.
+
+    Parameters
+    ----------
+    problem : Problem
+        What to integrate.
+    seed : int
+        Of the points.
+
+    Returns
+    -------
+    tuple
+        The proposal and the evaluations spent on the search.
+    """
+    # The standard normal density itself bounds the weights wherever the modes do not reach.
+    centres, heights, spent = [np.zeros((problem.draws, problem.dimension))], [], 0
+    for year in sorted({0, problem.years - 1}):
+        mode, peak, evaluations = find_modes(problem, year, centres[1:])
+        centres.append(mode)
+        heights.append(np.exp(peak - peak.max()))
+        spent += evaluations
+    points = allocate(np.stack(heights, axis=1), FIRST_POINTS * problem.draws)
+    state: int = np.random.SeedSequence(seed).generate_state(1).item()
+    return Proposal(tuple(centres), points, state), spent

@@ -2,7 +2,6 @@
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,19 +13,18 @@ from assess.reliability.importance import IntArray, Problem
 from assess.reliability.limit_state import Action, LimitState, Surroundings
 from assess.reliability.limit_states import LIMIT_STATES
 from assess.updating.kinds import KINDS
-from assess.updating.local import Local
+from assess.updating.local import LocalModel
 from assess.updating.model import Spec
 
 FloatArray = NDArray[np.float64]
 
-# Local variables that are normal on the logarithm.
-LOGARITHMIC = frozenset({"strength", "onset", "current"})
 # The group, in words, that a local variable counts to in the sensitivities.
 GROUPS = {
     "strength": "concrete strength",
     "cover": "cover and depth",
     "onset": "onset of corrosion",
     "current": "corrosion rate",
+    "current through its onset": "corrosion rate",
 }
 
 
@@ -35,9 +33,14 @@ class SectionState:
     """One section in one state of knowledge: what is left to chance, given each draw."""
 
     entry: SectionEntry
-    locals: Mapping[str, Local]
+    locals: tuple[LocalModel, ...]
     common: Mapping[str, FloatArray]  # common variables of the section, each (n_draw,)
-    measured: frozenset[str]  # local variables that a survey measured at the section itself
+    measured: frozenset[str]  # kinds of evidence that a survey brought from the section itself
+
+    @property
+    def draws(self) -> int:
+        """Number of draws."""
+        return len(next(iter(self.common.values())))
 
 
 def common_names(spec: CaseSpec, entry: SectionEntry) -> tuple[str, ...]:
@@ -56,7 +59,6 @@ def section_state(
     entry: SectionEntry,
     stage: int,
     values: Mapping[str, FloatArray],
-    seed: int,
 ) -> SectionState:
     """Condition a section's local variables on what was measured there.
 
@@ -70,34 +72,31 @@ def section_state(
         Number of surveys that count.
     values : mapping of str to ndarray (n_draw,)
         Draws of all common variables.
-    seed : int
-        Of what must be drawn (the onset at a measured place).
 
     Returns
     -------
     SectionState
         With local variables in a fixed order.
     """
-    position = list(case.spec.sections()).index(entry.name)
-    found: dict[str, Local] = {}
+    locals_: list[LocalModel] = []
     measured: set[str] = set()
-    for number, (key, kind) in enumerate(KINDS.items()):
+    for key, kind in KINDS.items():
         rows = spec.rows.get(key)
-        rng = np.random.default_rng([seed, stage, position, number])
-        here = kind.local(rows, stage, entry.name, entry.zone, values, rng)
-        found |= here
+        locals_ += kind.local(rows, stage, entry.name, entry.zone, values)
         place = None if rows is None else rows.place_of(entry.name)
         if (
             rows is not None
             and place is not None
             and rows.stage[rows.place == place].min() <= stage
         ):
-            measured |= set(here)
+            measured.add(key)
     names = common_names(case.spec, entry)
-    return SectionState(entry, found, {name: values[name] for name in names}, frozenset(measured))
+    return SectionState(
+        entry, tuple(locals_), {name: values[name] for name in names}, frozenset(measured)
+    )
 
 
-def without_dependence(state: SectionState, case: Case, spec: Spec, seed: int) -> SectionState:
+def without_dependence(state: SectionState, seed: int) -> SectionState:
     """Permute every common variable, and every measured local one, on its own.
 
     The marginals stay what they are; the dependence between them goes. Used only to show what
@@ -107,8 +106,6 @@ def without_dependence(state: SectionState, case: Case, spec: Spec, seed: int) -
     ----------
     state : SectionState
         With dependence.
-    case, spec : Case, Spec
-        The case and its measurements.
     seed : int
         Of the permutations.
 
@@ -119,21 +116,23 @@ def without_dependence(state: SectionState, case: Case, spec: Spec, seed: int) -
     """
     rng = np.random.default_rng([seed, 99])
     common = {name: rng.permutation(draws) for name, draws in state.common.items()}
-    shuffled: dict[str, Local] = {}
-    for kind in KINDS.values():
+    locals_: list[LocalModel] = []
+    for key, kind in KINDS.items():
         # Without measurements of its own the section follows its (permuted) zone.
-        shuffled |= kind.local(None, 0, state.entry.name, state.entry.zone, common, rng)
-    count = len(next(iter(common.values())))
-    for name in sorted(state.measured):  # a set has no order that a seed fixes
-        shuffled[name] = state.locals[name].take(rng.permutation(count))
-    return SectionState(state.entry, shuffled, common, state.measured)
+        follows = kind.local(None, 0, state.entry.name, state.entry.zone, common)
+        names = {name for model in follows for name in model.names}
+        own = [model for model in state.locals if names.intersection(model.names)]
+        locals_ += [m.without_dependence(rng) for m in own] if key in state.measured else follows
+    return SectionState(state.entry, tuple(locals_), common, state.measured)
 
 
 def dimensions(state: SectionState) -> dict[str, str]:
     """Name the standard normals of a section in order, each with its group in words."""
     limit_state = LIMIT_STATES[state.entry.limit_state]
     return {
-        **{name: GROUPS.get(name, name) for name in state.locals},
+        **{
+            normal: GROUPS.get(normal, normal) for model in state.locals for normal in model.normals
+        },
         **limit_state.chances(state.entry),
     }
 
@@ -171,7 +170,6 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
     """
     limit_state: LimitState = LIMIT_STATES[state.entry.limit_state]
     names = list(dimensions(state))
-    local_names = list(state.locals)
     age = ages(case)
     maximum = limit_state.annual_maximum(
         state.entry, case.spec, calendar_years(case).astype(np.float64)
@@ -183,17 +181,15 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
         capacity = limit_state.load_capacity(
             state.entry,
             case.spec,
-            _surroundings(state, local_names, names, z, draws, age[years], action),
+            _surroundings(state, names, z, draws, age[years], action),
         )
         return np.asarray((mode[years] - capacity) / scale[years])
 
-    count = len(next(iter(state.common.values())))
-    return Problem(log_hazard, len(names), count, len(age), mode / scale)
+    return Problem(log_hazard, len(names), state.draws, len(age), mode / scale)
 
 
 def _surroundings(
     state: SectionState,
-    local_names: Sequence[str],
     names: Sequence[str],
     z: FloatArray,
     draws: IntArray,
@@ -201,14 +197,17 @@ def _surroundings(
     action: Action,
 ) -> Surroundings:
     """Give local and common values for chosen draws and points."""
-    local: dict[str, Any] = {}
-    for i, name in enumerate(local_names):
-        value = state.locals[name].value(z[..., i, None], draws)
-        local[name] = np.exp(value) if name in LOGARITHMIC else value
+    local: dict[str, FloatArray] = {}
+    first = 0
+    for model in state.locals:
+        last = first + len(model.normals)
+        found = model.values(z[..., first:last], draws)
+        local |= {name: value[..., None] for name, value in found.items()}
+        first = last
     return Surroundings(
         local=local,
         common={name: value[draws][:, None, None] for name, value in state.common.items()},
-        chance={name: z[..., i, None] for i, name in enumerate(names) if i >= len(local_names)},
+        chance={name: z[..., i, None] for i, name in enumerate(names) if i >= first},
         age=age,
         action=action,
     )

@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from assess.case.reader import Case
-from assess.reliability.importance import Sample
+from assess.reliability.importance import Proposal, Sample
 from assess.reliability.lifetime import Probabilities, integrate, probabilities, windows
 from assess.reliability.limit_state import Action
 from assess.reliability.problem import SectionState, build_problem, calendar_years
@@ -51,6 +51,7 @@ class SectionReliability:
     conditional: FloatArray  # probability given the draw, (n_draw, n_reference)
     sample: Sample
     load_ratio: FloatArray  # mode over scale of each year's load, (n_year,)
+    proposal: Proposal
     evaluations: int
 
 
@@ -64,7 +65,12 @@ class Precision:
 
 
 def section_reliability(
-    case: Case, state: SectionState, action: Action, period: int, precision: Precision
+    case: Case,
+    state: SectionState,
+    action: Action,
+    period: int,
+    precision: Precision,
+    proposal: Proposal | None = None,
 ) -> SectionReliability:
     """Integrate one section under one option.
 
@@ -79,7 +85,9 @@ def section_reliability(
     period : int
         Reference period of the target [yr], at most the horizon.
     precision : Precision
-        Tolerance and seed; equal seeds give common random numbers.
+        Tolerance and seed.
+    proposal : Proposal, optional
+        Of the same section under another option, for common random numbers.
 
     Returns
     -------
@@ -87,9 +95,14 @@ def section_reliability(
         Yearly, cumulative and for every window of the reference period.
     """
     problem = build_problem(case, state, action)
-    sample, annual = integrate(
-        problem, chains=precision.chains, tolerance=precision.tolerance, seed=precision.seed
+    found = integrate(
+        problem,
+        chains=precision.chains,
+        tolerance=precision.tolerance,
+        seed=precision.seed,
+        proposal=proposal,
     )
+    sample, annual = found.sample, found.annual
     years = calendar_years(case)
     last = np.arange(problem.years)
     cumulative = probabilities(sample, np.zeros_like(last), last, precision.chains)
@@ -105,7 +118,8 @@ def section_reliability(
         reference.conditional,
         sample,
         problem.load_ratio,
-        sample.evaluations,
+        found.proposal,
+        found.evaluations,
     )
 
 
@@ -158,7 +172,7 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
 
     def probability(log_factor: float) -> float:
         scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 50.0)).sum(axis=-1)
-        return float(np.mean(sample.weight * -np.expm1(-scaled)))
+        return float(np.sum(sample.weight * -np.expm1(-scaled)) / len(sample.weight))
 
     low, high = np.log(0.02), np.log(5.0)
     if probability(low) > target_probability or probability(high) < target_probability:

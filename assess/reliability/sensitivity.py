@@ -22,7 +22,6 @@ _COMMON_GROUPS = {
     "current": "corrosion rate",
     "current_scatter": "corrosion rate",
 }
-_LOCAL_GROUPS = {"onset": "onset of corrosion", "current": "corrosion rate"}
 
 
 def sensitivity_factors(state: SectionState, sample: Sample, year: int) -> dict[str, float]:
@@ -65,11 +64,11 @@ def sensitivity_factors(state: SectionState, sample: Sample, year: int) -> dict[
 
     if not total > 0.0:
         return {}
-    means = np.einsum("rdp,rdpi->i", failing, sample.z) / total
+    means = np.einsum("rcp,rcpi->i", failing, sample.z) / total
     for (_, group), mean in zip(dimensions(state).items(), means, strict=True):
         add(group, float(mean**2))
     add(VARIABLE_LOAD, _load_mean(sample.hazard[..., year], failing, total) ** 2)
-    by_draw = failing.sum(axis=(0, 2)) / total
+    by_draw = sample.per_draw(failing.sum(axis=0)) / total
     for group, share in _common_shares(state, by_draw):
         add(group, share)
     positive = {group: max(share, 0.0) for group, share in shares.items()}
@@ -91,11 +90,6 @@ def _common_shares(state: SectionState, by_draw: FloatArray) -> list[tuple[str, 
     """Share out the common variables' part; ``by_draw`` is each draw's share of failure."""
     columns = {name: draws for name, draws in state.common.items() if np.ptp(draws) > 0.0}
     groups = [_COMMON_GROUPS.get(name.rpartition(".")[2], "steel strength") for name in columns]
-    for name in sorted(state.measured & set(_LOCAL_GROUPS)):
-        # A measured place's own onset is known per draw: it belongs to the draws.
-        if np.ptp(state.locals[name].mean) > 0.0 and not np.any(state.locals[name].sd):
-            columns[f"local {name}"] = state.locals[name].mean
-            groups.append(_LOCAL_GROUPS[name])
     scores = normal_scores(np.column_stack(list(columns.values())))
     mean = by_draw @ scores
     correlation = np.corrcoef(scores, rowvar=False)

@@ -1,6 +1,7 @@
 """Evidence: compressive strength of drilled cores."""
 
 from collections.abc import Mapping
+from dataclasses import replace
 from typing import Any, Literal, cast
 
 import numpy as np
@@ -23,7 +24,7 @@ from assess.updating.kind import (
     population_local,
     zone_values,
 )
-from assess.updating.local import Local
+from assess.updating.local import LocalModel
 from assess.updating.nested import local_posterior, nested_log_likelihood
 from assess.updating.variables import Variable
 
@@ -210,19 +211,18 @@ class Cores(EvidenceKind):
         section: str,
         zone: str,
         values: Mapping[str, FloatArray],
-        _rng: np.random.Generator,
-    ) -> dict[str, Local]:
-        """Log strength at a section, given its own cores where there are any."""
+    ) -> tuple[LocalModel, ...]:
+        """Strength at a section, given its own cores where there are any."""
         population = population_local(
-            values, zone, "concrete_mean", "concrete_scatter", logarithm=True
+            "strength", values, zone, "concrete_mean", "concrete_scatter", logarithm=True
         )
         place = None if rows is None else rows.place_of(section)
         if rows is None or place is None:
-            return {"strength": population}
+            return (population,)
         here = (rows.place == place) & (rows.stage <= stage)
         precision = np.where(here, rows.extra["precision"], 0.0)
         residual = rows.value - self._shift(rows, values) - population.mean[:, None]
         mean, sd = local_posterior(
             precision.sum(), residual @ precision, population.mean, population.sd**2
         )
-        return {"strength": Local(mean, sd)}
+        return (replace(population, mean=mean, sd=sd),)

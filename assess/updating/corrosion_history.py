@@ -10,13 +10,11 @@ from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import special
 
 from assess import operations as op
 from assess.mechanics.corrosion import penetration_depth
 from assess.updating import nested
 from assess.updating.kind import FloatArray, Numeric, Rows
-from assess.updating.local import Local
 
 NODES = 56  # Gauss-Legendre, per stretch between visits; tests compare with adaptive quadrature
 GATHER = 6.0  # nodes resolve e^-GATHER of a stretch
@@ -24,7 +22,6 @@ REACH = 6.0  # standard deviations of ln onset that the quadrature spans to each
 OFF = 1e3  # stands for no bound on ln rate
 LEAST_AGE = 1e-12  # [yr] keeps logarithms finite; at it nothing has corroded
 LEAST = 1e-290  # keeps the logarithm of a likelihood finite
-GRID = 257  # points of the tabulated distribution of a measured place's onset
 
 
 class Population(NamedTuple):
@@ -130,7 +127,7 @@ def places(rows: Rows, stage: int) -> Places:
     )
 
 
-def _years_at_visits(seen: Places, onset: Numeric) -> list[Numeric]:
+def years_at_visits(seen: Places, onset: Numeric) -> list[Numeric]:
     """Give ln of the years corroded by each visit; far below any rate's reach before the onset."""
     return [op.log(op.maximum(seen.age[:, k, None] - onset, LEAST_AGE)) for k in range(seen.visits)]
 
@@ -147,7 +144,7 @@ def healed_places(rows: Rows) -> list[str]:
     return healed
 
 
-class _Rate(NamedTuple):
+class RateGivenOnset(NamedTuple):
     """Distribution of ln rate given the onset, and how likely the findings are."""
 
     log_density: Numeric  # of the losses measured
@@ -158,7 +155,7 @@ class _Rate(NamedTuple):
     upper: Numeric
 
 
-def _rate_given_onset(seen: Places, zone: Population, log_age: Sequence[Numeric]) -> _Rate:
+def rate_given_onset(seen: Places, zone: Population, log_age: Sequence[Numeric]) -> RateGivenOnset:
     """Weigh the findings for given onsets.
 
     ``log_age`` holds, visit by visit, ln of the years corroded by then; it and the results have
@@ -187,10 +184,10 @@ def _rate_given_onset(seen: Places, zone: Population, log_age: Sequence[Numeric]
     side = op.where(low > 0.0, -1.0, 1.0)
     window = side * (op.normal_cdf(side * high) - op.normal_cdf(side * low))
     density = nested.nested_log_likelihood(precision, weighted, square, variance)
-    return _Rate(density, window, mean, sd, low, high)
+    return RateGivenOnset(density, window, mean, sd, low, high)
 
 
-def _log_onset_density(zone: Population, log_onset: Numeric) -> Numeric:
+def log_onset_density(zone: Population, log_onset: Numeric) -> Numeric:
     """Lognormal log-density of the onset [1/yr]."""
     score = (log_onset - zone.log_onset) / zone.onset_scatter
     return op.normal_logpdf(score) - op.log(zone.onset_scatter) - log_onset
@@ -241,7 +238,7 @@ def log_likelihood(seen: Places, zone: Population) -> Numeric:
         end = op.maximum(op.minimum(end, top), start)
         score = end - (end - start) * before
         onset = op.exp(zone.log_onset + zone.onset_scatter * score)
-        rate = _rate_given_onset(seen, zone, _years_at_visits(seen, onset))
+        rate = rate_given_onset(seen, zone, years_at_visits(seen, onset))
         stretches.append(
             (op.normal_logpdf(score) + rate.log_density, (end - start) * share * rate.window)
         )
@@ -255,76 +252,3 @@ def log_likelihood(seen: Places, zone: Population) -> Numeric:
     for log_density, weight_here in stretches:
         total = total + (op.exp(log_density - peak[:, None]) * weight_here).sum(axis=1)
     return op.where(known > 0.0, peak + op.log(op.maximum(total, LEAST)), 0.0)
-
-
-def local_posterior(
-    seen: Places, zone: Population, rng: np.random.Generator
-) -> tuple[Local, Local]:
-    """Draw the onset of one measured place for each draw; give its rate given that onset.
-
-    Parameters
-    ----------
-    seen : Places
-        One place.
-    zone : Population
-        Arrays of shape (n_draw,).
-    rng : Generator
-        Source of the draws.
-
-    Returns
-    -------
-    tuple of Local
-        ln onset [ln yr], known per draw, and ln rate [ln mm/yr], truncated normal given it.
-        The pair is a draw from the joint posterior of the place, exact but for tabulating the
-        onset at `GRID` points.
-    """
-    column = Population(*(np.asarray(part)[:, None] for part in zone))
-    last = float(np.exp(seen.log_last[0]))
-    w = np.linspace(0.0, 1.0, GRID)[1:-1]
-    onset = last * (1.0 - w * w)
-    seen_then = _rate_given_onset(seen, column, _years_at_visits(seen, onset[None, :]))
-    with np.errstate(divide="ignore"):  # an impossible onset has no density
-        log_density = (
-            _log_onset_density(column, np.log(onset))
-            + np.log(2.0 * last * w)
-            + seen_then.log_density
-            + np.log(seen_then.window)
-        )
-    beyond = np.asarray((column.log_onset - np.log(last)) / column.onset_scatter)[:, 0]
-    log_later = np.where(seen.found.max() > 0.0, -np.inf, special.log_ndtr(beyond))
-    drawn = _draw_tabulated(w, log_density, log_later, rng)
-    later = np.isnan(drawn)
-    log_onset = np.log(last * (1.0 - np.where(later, 0.5, drawn) ** 2))
-    tail = special.ndtri(special.ndtr(beyond) * rng.uniform(size=len(beyond)))
-    log_onset = np.where(later, zone.log_onset - zone.onset_scatter * tail, log_onset)
-    rate = _rate_given_onset(seen, column, _years_at_visits(seen, np.exp(log_onset)[:, None]))
-    bounds = [np.broadcast_to(part[:, 0], log_onset.shape) for part in (rate.lower, rate.upper)]
-    return (
-        Local(log_onset, np.zeros_like(log_onset)),
-        Local(
-            np.broadcast_to(rate.mean[:, 0], log_onset.shape),
-            np.broadcast_to(rate.sd[:, 0], log_onset.shape),
-            *bounds,
-        ),
-    )
-
-
-def _draw_tabulated(
-    grid: FloatArray, log_density: FloatArray, log_later: FloatArray, rng: np.random.Generator
-) -> FloatArray:
-    """Draw one point per row from tabulated densities; NaN stands for the mass beyond.
-
-    The distribution function is that of the trapezoidal rule, inverted linearly between points.
-    """
-    peak = np.maximum(log_density.max(axis=1), log_later)
-    density = np.exp(log_density - peak[:, None])
-    step = np.diff(grid)
-    cells = 0.5 * (density[:, 1:] + density[:, :-1]) * step
-    cumulative = np.cumsum(cells, axis=1)
-    wanted = rng.uniform(size=len(peak)) * (cumulative[:, -1] + np.exp(log_later - peak))
-    cell = np.minimum((cumulative < wanted[:, None]).sum(axis=1), len(step) - 1)
-    row = np.arange(len(peak))
-    before = cumulative[row, cell] - cells[row, cell]
-    share = (wanted - before) / np.maximum(cells[row, cell], 1e-300)
-    point = grid[cell] + np.clip(share, 0.0, 1.0) * step[cell]
-    return np.where(wanted > cumulative[:, -1], np.nan, point)

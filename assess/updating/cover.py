@@ -7,6 +7,7 @@ from typing import Annotated, Any, cast
 import numpy as np
 from numpy.typing import NDArray
 from pydantic import Field
+from scipy import special
 
 from assess import operations as op
 from assess.case.forms import Closed, Column, EvidenceEntry, EvidenceForm
@@ -25,9 +26,16 @@ from assess.updating.kind import (
     population_local,
     zone_values,
 )
-from assess.updating.local import Local
+from assess.updating.local import (
+    LocalModel,
+    TabulatedLocal,
+    quantile_table,
+    scores_of_density,
+)
 from assess.updating.nested import local_posterior, nested_log_likelihood
 from assess.updating.variables import Variable
+
+REACH_GRID = 401  # points at which a cover known to lie beyond a meter's range is tabulated
 
 
 class Meter(Closed):
@@ -247,24 +255,57 @@ class Cover(EvidenceKind):
         section: str,
         zone: str,
         values: Mapping[str, FloatArray],
-        _rng: np.random.Generator,
-    ) -> dict[str, Local]:
+    ) -> tuple[LocalModel, ...]:
         """Cover at a section, given its own readings where there are any."""
-        population = population_local(values, zone, "cover_mean", "cover_scatter", logarithm=False)
+        population = population_local(
+            "cover", values, zone, "cover_mean", "cover_scatter", logarithm=False
+        )
         place = None if rows is None else rows.place_of(section)
         if rows is None or place is None:
-            return {"cover": population}
-        here = (rows.place == place) & (rows.stage <= stage) & np.isfinite(rows.value)
-        bias = np.broadcast_to(
-            _biases(values, rows.extra["meter"][here].astype(np.int64)),
-            (len(population.mean), int(here.sum())),
-        )
-        precision = 1.0 / rows.extra["variance"][here]
-        residual = rows.value[here] - bias - population.mean[:, None]
+            return (population,)
+        here = (rows.place == place) & (rows.stage <= stage)
+        read = here & np.isfinite(rows.value)
+        count = len(population.mean)
+        precision = 1.0 / rows.extra["variance"][read]
+        residual = rows.value[read] - _bias_of(rows, read, values, count)
         mean, sd = local_posterior(
-            precision.sum(), residual @ precision, population.mean, population.sd**2
+            precision.sum(),
+            (residual - population.mean[:, None]) @ precision,
+            population.mean,
+            population.sd**2,
         )
-        return {"cover": Local(mean, sd)}
+        beyond = here & ~np.isfinite(rows.value)
+        if not beyond.any():
+            return (replace(population, mean=mean, sd=sd),)
+        limit = rows.extra["beyond"][beyond] - _bias_of(rows, beyond, values, count)
+        return (_beyond_reach(mean, sd, limit, np.sqrt(rows.extra["variance"][beyond])),)
+
+
+def _bias_of(
+    rows: Rows, chosen: NDArray[np.bool_], values: Mapping[str, FloatArray], count: int
+) -> FloatArray:
+    """Bias of the meters of chosen rows, (n_draw, n_chosen)."""
+    meter = rows.extra["meter"][chosen].astype(np.int64)
+    return np.broadcast_to(_biases(values, meter), (count, len(meter)))
+
+
+def _beyond_reach(
+    mean: FloatArray, sd: FloatArray, limit: FloatArray, error: FloatArray
+) -> TabulatedLocal:
+    """Condition a normal cover on readings beyond the meter's range.
+
+    ``mean`` and ``sd`` (n_draw,) hold before; ``limit`` (n_draw, n_reading) is the cover at which
+    each meter reads its limit, ``error`` (n_reading,) its scatter.
+    """
+    top = np.maximum(mean + 8.0 * sd, limit.max(axis=1) + 8.0 * error.max())
+    share = np.linspace(0.0, 1.0, REACH_GRID)
+    low = (mean - 8.0 * sd)[:, None]
+    grid = low + (top[:, None] - low) * share
+    log_density = -0.5 * ((grid - mean[:, None]) / sd[:, None]) ** 2
+    for k in range(limit.shape[1]):
+        log_density = log_density + special.log_ndtr((grid - limit[:, k, None]) / error[k])
+    scores, _ = scores_of_density(grid, log_density)
+    return TabulatedLocal("cover", quantile_table(grid, scores))
 
 
 def _bias_name(meter: int) -> str:

@@ -16,7 +16,7 @@ from assess import operations as op
 from assess.case.forms import EvidenceForm
 from assess.case.reader import Case, Evidence
 from assess.errors import Fault
-from assess.updating.local import Local
+from assess.updating.local import Local, LocalModel
 from assess.updating.variables import Variable
 
 Numeric = Any  # float, ndarray or PyTensor variable
@@ -101,8 +101,7 @@ class EvidenceKind(ABC):
         section: str,
         zone: str,
         values: Mapping[str, FloatArray],
-        rng: np.random.Generator,
-    ) -> dict[str, Local]:
+    ) -> tuple[LocalModel, ...]:
         """Distribution of a section's local variables of this kind, given the draws."""
 
 
@@ -173,8 +172,15 @@ def zone_values(rows: Rows, values: Mapping[str, Numeric], variable: str) -> Num
 
 
 def population_local(
-    values: Mapping[str, FloatArray], zone: str, mean: str, sd: str, *, logarithm: bool
+    name: str,
+    values: Mapping[str, FloatArray],
+    zone: str,
+    level: str,
+    scatter: str,
+    *,
+    logarithm: bool,
 ) -> Local:
     """Give the local variable of a place nobody measured, drawn from its zone."""
-    centre = values[f"{zone}.{mean}"]
-    return Local(np.log(centre) if logarithm else centre, values[f"{zone}.{sd}"])
+    centre = values[f"{zone}.{level}"]
+    mean = np.log(centre) if logarithm else centre
+    return Local(name, mean, values[f"{zone}.{scatter}"], logarithm)

@@ -11,7 +11,6 @@ from assess.case.forms import Column, EvidenceEntry, EvidenceForm
 from assess.case.quantities import CoefficientOfVariation, Length
 from assess.case.reader import Case
 from assess.errors import Fault
-from assess.mechanics.corrosion import penetration_depth
 from assess.updating import corrosion_history as history
 from assess.updating.corrosion_history import Places, Population
 from assess.updating.kind import (
@@ -24,7 +23,8 @@ from assess.updating.kind import (
     population_local,
     zone_values,
 )
-from assess.updating.local import Local
+from assess.updating.local import LocalModel
+from assess.updating.local_corrosion import measured_corrosion
 
 NONE_FOUND = ("none", "no loss", "none found", "no loss found")
 
@@ -202,30 +202,23 @@ class SectionLoss(EvidenceKind):
         section: str,
         zone: str,
         values: Mapping[str, FloatArray],
-        rng: np.random.Generator,
-    ) -> dict[str, Local]:
-        """Onset and current (logarithms) at a section, given its own break-outs."""
+    ) -> tuple[LocalModel, ...]:
+        """Onset and current at a section, given its own break-outs."""
         if f"{zone}.onset" not in values:
-            return {}
+            return ()
         place = None if rows is None else rows.place_of(section)
         known = None if rows is None or place is None else history.places(rows, stage).one(place)
         if known is None or not known.anything_known:
-            return {
-                "onset": population_local(values, zone, "onset", "onset_scatter", logarithm=True),
-                "current": population_local(
-                    values, zone, "current", "current_scatter", logarithm=True
+            return (
+                population_local("onset", values, zone, "onset", "onset_scatter", logarithm=True),
+                population_local(
+                    "current", values, zone, "current", "current_scatter", logarithm=True
                 ),
-            }
-        onset, rate = history.local_posterior(
-            known,
-            history.population(
-                *(
-                    values[f"{zone}.{name}"]
-                    for name in ("onset", "onset_scatter", "current", "current_scatter")
-                )
-            ),
-            rng,
+            )
+        zone_of = history.population(
+            *(
+                values[f"{zone}.{name}"]
+                for name in ("onset", "onset_scatter", "current", "current_scatter")
+            )
         )
-        to_current = np.log(penetration_depth(1.0, 1.0))
-        current = Local(rate.mean - to_current, rate.sd, rate.lower, rate.upper)
-        return {"onset": onset, "current": current}
+        return (measured_corrosion(known, zone_of),)

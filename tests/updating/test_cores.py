@@ -75,7 +75,7 @@ def test_simulation_has_the_moments_of_the_model(rows):
 
 
 def test_local_strength_given_its_cores(rows):
-    found = CORES.local(rows, 1, "S1", "deck", VALUES, np.random.default_rng(1))["strength"]
+    found = CORES.local(rows, 1, "S1", "deck", VALUES)[0]
     values = _at(1)
     here = rows.place == rows.place_of("S1")
     shift = sum(
@@ -87,9 +87,9 @@ def test_local_strength_given_its_cores(rows):
     mean = (prior * np.log(38.0) + precision @ (rows.value[here] - shift)) / total
     assert found.mean[1] == pytest.approx(mean)
     assert found.sd[1] == pytest.approx(total**-0.5)
-    elsewhere = CORES.local(rows, 1, "S2", "deck", VALUES, np.random.default_rng(1))["strength"]
+    elsewhere = CORES.local(rows, 1, "S2", "deck", VALUES)[0]
     np.testing.assert_allclose(elsewhere.mean, np.log(VALUES["deck.concrete_mean"]))
-    before = CORES.local(rows, 0, "S1", "deck", VALUES, np.random.default_rng(1))["strength"]
+    before = CORES.local(rows, 0, "S1", "deck", VALUES)[0]
     np.testing.assert_allclose(before.sd, VALUES["deck.concrete_scatter"])
 
 

@@ -195,44 +195,6 @@ def test_healed_places(visits, healed):
     assert history.healed_places(_rows(visits)) == (["section S"] if healed else [])
 
 
-@pytest.mark.parametrize("name", DESIGNS)
-@pytest.mark.parametrize("parameters", [(35.0, 0.3, 3.0, 0.5), (25.0, 0.6, 1.5, 0.2)])
-def test_local_posterior_has_the_moments_of_the_joint_density(name, parameters):
-    visits, zone = DESIGNS[name](50.0), _zone(*parameters)
-    count = 40_000
-    rng = np.random.default_rng(3)
-    population = Population(*(np.full(count, p) for p in zone))
-    onset, rate = history.local_posterior(history.places(_rows(visits), 9).one(0), population, rng)
-    assert not onset.sd.any()
-    drawn = np.stack([onset.mean, rate.value(rng.standard_normal(count))])
-    expected = _joint_moments(visits, zone)
-    for k, series in enumerate((*drawn, drawn[0] ** 2, drawn[1] ** 2, drawn[0] * drawn[1])):
-        error = series.std() / np.sqrt(count)
-        assert series.mean() == pytest.approx(expected[k], abs=4.5 * error + 1e-4)
-
-
-def _joint_moments(visits, zone):
-    """E of ln onset, ln rate, their squares and product, on a fine grid of both scores."""
-    z_onset = np.linspace(-7.0, 7.0, 3001)
-    z_rate = np.linspace(-7.0, 7.0, 1401)
-    log_onset = (zone[0] + zone[1] * z_onset)[:, None]
-    log_rate = (zone[2] + zone[3] * z_rate)[None, :]
-    log_weight = -0.5 * z_onset[:, None] ** 2 - 0.5 * z_rate[None, :] ** 2
-    allowed = np.ones(log_weight.shape)
-    for age, loss, limit, variation in visits:
-        years = np.maximum(age - np.exp(log_onset), 1e-300)
-        log_loss = log_rate + np.log(years)
-        if np.isnan(loss):
-            allowed = allowed * (log_loss < np.log(limit))
-        else:
-            allowed = allowed * (log_loss >= np.log(limit))
-            log_weight = log_weight - 0.5 * (np.log(loss) - log_loss) ** 2 / np.log1p(variation**2)
-    weight = np.exp(log_weight - log_weight.max()) * allowed
-    weight /= weight.sum()
-    parts = (log_onset, log_rate, log_onset**2, log_rate**2, log_onset * log_rate)
-    return [float((weight * part).sum()) for part in parts]
-
-
 @pytest.mark.parametrize("name", ["found", "none twice, then found"])
 def test_graph_and_numbers_agree_and_gradient_is_finite(name):
     pytensor = pytest.importorskip("pytensor")

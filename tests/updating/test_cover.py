@@ -1,6 +1,8 @@
+from dataclasses import replace
+
 import numpy as np
 import pytest
-from scipy import stats
+from scipy import integrate, stats
 
 from assess.updating.kinds import KINDS
 from tests.verification import cases
@@ -99,14 +101,41 @@ def test_simulation_has_the_moments_of_the_model(rows):
 
 
 def test_local_cover_given_its_readings(rows):
-    found = COVER.local(rows, 1, "S1", "deck", VALUES, np.random.default_rng(1))["cover"]
+    found = COVER.local(rows, 1, "S1", "deck", VALUES)[0]
     # Two readings of meter 1 at S1: 43 and 39 mm.
     prior, precision = 7.0**-2.0, 3.0**-2.0
     mean = (prior * 38.0 + precision * (43.0 + 39.0 - 2 * 1.5)) / (prior + 2 * precision)
     assert found.mean[0] == pytest.approx(mean)
     assert found.sd[0] == pytest.approx((prior + 2 * precision) ** -0.5)
-    elsewhere = COVER.local(rows, 2, "S2", "deck", VALUES, np.random.default_rng(1))["cover"]
+    elsewhere = COVER.local(rows, 2, "S2", "deck", VALUES)[0]
     np.testing.assert_array_equal(elsewhere.mean, VALUES["deck.cover_mean"])
+
+
+def test_a_reading_beyond_the_range_conditions_the_local_cover(rows):
+    # S1 once more, now out of reach at 60 mm: posterior by quadrature of its definition.
+    there = np.flatnonzero(rows.place == rows.place_of("S1"))
+    value, beyond = rows.value.copy(), rows.extra["beyond"].copy()
+    value[there[1]], beyond[there[1]] = np.nan, 60.0
+    censored = replace(rows, value=value, extra={**rows.extra, "beyond": beyond})
+    (found,) = COVER.local(censored, 1, "S1", "deck", VALUES)
+    for draw in range(len(VALUES["deck.cover_mean"])):
+        at = _at(draw)
+        bias = at["cover_meter_1.bias"]
+
+        def density(c, at=at, bias=bias):
+            return (
+                stats.norm.pdf(c, at["deck.cover_mean"], at["deck.cover_scatter"])
+                * stats.norm.pdf(rows.value[there[0]], c + bias, 3.0)
+                * stats.norm.cdf((c + bias - 60.0) / 3.0)
+            )
+
+        total = integrate.quad(density, 0.0, 120.0, points=[50.0, 60.0])[0]
+        z = np.array([[[-2.0], [0.0], [2.0]]])
+        for value_at, score in zip(
+            found.values(z, np.array([draw]))["cover"][0], z.ravel(), strict=True
+        ):
+            below = integrate.quad(density, 0.0, value_at, points=[value_at - 5.0])[0] / total
+            assert below == pytest.approx(stats.norm.cdf(score), rel=2e-2)
 
 
 def test_graph_and_numbers_agree(rows):
