@@ -5,7 +5,7 @@ import time
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import contextmanager
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
@@ -13,26 +13,20 @@ from pathlib import Path
 from assess import store
 from assess.case.reader import Case, CaseReading, read_case
 from assess.case.spec import NamedTarget
-from assess.decisions.economics import option_results
 from assess.decisions.results import (
-    Conflict,
-    DataRecord,
     Provenance,
     RunRecord,
     SectionResult,
-    StageRecord,
     Target,
-    VariableRecord,
 )
 from assess.decisions.sections import Question, gather, stage_results, used_variables
 from assess.decisions.targets import target, user_target
-from assess.errors import CaseError, Fault, NotConvergedError
-from assess.reliability.limit_states import LIMIT_STATES
+from assess.errors import CaseError, NotConvergedError
+from assess.input_checks import further_faults
+from assess.recording import run_record
 from assess.reliability.section import Precision
-from assess.updating.checks import DataSet, data_sets, surprises
-from assess.updating.kinds import KINDS
+from assess.updating.checks import data_sets
 from assess.updating.model import Spec, specify
-from assess.updating.prior import joint_prior
 from assess.updating.sampling import Settings
 from assess.updating.stages import StageDraws, posterior_draws, prior_draws, stage_list
 from assess.vocabulary import vocabulary
@@ -80,55 +74,11 @@ def check_case(path: Path) -> CaseReading:
         The case where there is no fault; every fault; every doubt.
     """
     reading = read_case(path, vocabulary())
-    if reading.case is None:
+    faults = [] if reading.readable is None else further_faults(reading.readable)
+    if not faults:
         return reading
-    faults = [fault for kind in KINDS.values() for fault in kind.faults(reading.case)]
-    faults += _decision_faults(reading.case)
-    try:
-        joint_prior(reading.case)
-    except ValueError as error:  # a Pearson coefficient that the true marginals do not allow
-        faults.append(Fault(str(path), 0, f"dependence: {error}"))
-    if faults:
-        return CaseReading(None, tuple(sorted(faults)), reading.doubts)
-    return reading
-
-
-def _decision_faults(case: Case) -> list[Fault]:
-    """Find what the decision asks for and the case cannot give."""
-    faults = []
-    stated = case.spec.decision.target
-    horizon = case.spec.structure.horizon
-    if stated.period > horizon or stated.period != int(stated.period):
-        faults.append(
-            Fault(
-                str(case.path),
-                0,
-                "decision.target: the reference period must be whole years within the horizon",
-                f"{stated.period:g}",
-                f"1 to {horizon}",
-                "take a target of another period or a longer horizon",
-            )
-        )
-    else:
-        try:
-            case_target(case)
-        except (KeyError, ValueError) as error:
-            text = str(error.args[0]) if error.args else str(error)
-            faults.append(Fault(str(case.path), 0, f"decision.target: {text}"))
-    members = {member.name for member in case.spec.members}
-    for option in case.spec.decision.options:
-        faults += [
-            Fault(
-                str(case.path),
-                0,
-                f"decision.options: option {option.name!r} names a member that does not exist",
-                name,
-                ", ".join(sorted(members)),
-            )
-            for name in option.members
-            if name not in members
-        ]
-    return faults
+    everything = tuple(sorted({*reading.faults, *faults}))
+    return CaseReading(None, everything, reading.doubts, reading.readable)
 
 
 def case_target(case: Case) -> Target:
@@ -178,18 +128,24 @@ def run_case(path: Path, options: RunOptions, observe: Observer) -> RunRecord:
             raise CaseError(list(reading.faults))
         case, spec = reading.case, specify(reading.case)
     settings = _settings(case, options.seed)
+    key = store.sampling_key(spec, stage_list(case), settings)
     question = Question(
         case_target(case),
         Precision(settings.chains, case.spec.sampling.integration_error, settings.seed),
         settings.seed,
     )
     stages, results, sampler = _sample_and_integrate(
-        case, spec, settings, question, options, observe, clock
+        case, spec, settings, key, question, options, observe, clock
     )
     with clock.measure("checks of fit"):
         observe("checking the fit", 0.0)
         sets = data_sets(case, spec, stages, settings.seed)
-    record = _record(case, spec, stages, results, sets, question.target, reading, options)
+    record = replace(
+        run_record(case, spec, stages, results, sets, question.target),
+        doubts=[str(doubt) for doubt in reading.doubts],
+        accepted_unconverged=options.accept_unconverged
+        and not all(draws.diagnostics.passed for draws in stages),
+    )
     provenance = Provenance(
         options.command,
         started,
@@ -199,7 +155,7 @@ def run_case(path: Path, options: RunOptions, observe: Observer) -> RunRecord:
         clock.seconds,
         sampler,
     )
-    return _write(record, provenance, stages, spec, settings, case, options.out, observe, clock)
+    return _write(record, provenance, stages, spec, key, options.out, observe, clock)
 
 
 def _settings(case: Case, seed: int | None) -> Settings:
@@ -217,6 +173,7 @@ def _sample_and_integrate(
     case: Case,
     spec: Spec,
     settings: Settings,
+    key: str,
     question: Question,
     options: RunOptions,
     observe: Observer,
@@ -224,7 +181,6 @@ def _sample_and_integrate(
 ) -> tuple[list[StageDraws], list[SectionResult], str]:
     """Go through the stages; sections of a stage are integrated while the next is sampled."""
     used = used_variables(case)
-    key = store.sampling_key(spec, stage_list(case), settings)
     last = len(case.stages)
     stages: list[StageDraws] = []
     futures: list[Future[list[SectionResult]]] = []
@@ -291,143 +247,20 @@ def _versions() -> dict[str, str]:
     return found
 
 
-def _record(
-    case: Case,
-    spec: Spec,
-    stages: Sequence[StageDraws],
-    results: Sequence[SectionResult],
-    sets: Sequence[DataSet],
-    wanted: Target,
-    reading: CaseReading,
-    options: RunOptions,
-) -> RunRecord:
-    """Assemble what was found; provenance comes when everything is written."""
-    structure = case.spec.structure
-    costs = case.spec.decision.costs
-    names = [draws.name for draws in stages]
-    return RunRecord(
-        title=structure.name,
-        description=" ".join(filter(None, (structure.description, structure.note))),
-        built=structure.built.year,
-        assessed=structure.assessed,
-        horizon=structure.horizon,
-        invented=structure.invented,
-        target=wanted,
-        stages=[_stage_record(draws) for draws in stages],
-        variables=_variable_records(case, spec, stages),
-        data=[_data_record(item, stages) for item in sets],
-        results=results,
-        options=option_results(case, results, names[-1]),
-        doubts=[str(doubt) for doubt in reading.doubts],
-        conflicts=[Conflict(*pair) for pair in surprises(sets, names)],
-        assumptions=_assumptions(case),
-        currency="" if costs is None else costs.currency,
-        discount_rate=None if costs is None else costs.discount_rate,
-        failure_cost=None if costs is None else costs.failure,
-        provenance=Provenance("", "", 0, {}, {}, {}, ""),
-        accepted_unconverged=options.accept_unconverged
-        and not all(draws.diagnostics.passed for draws in stages),
-    )
-
-
-def _stage_record(draws: StageDraws) -> StageRecord:
-    found = draws.diagnostics
-    return StageRecord(
-        draws.name,
-        draws.date,
-        draws.chains,
-        draws.physical.shape[1],
-        found.rhat_max,
-        found.ess_bulk_min,
-        found.ess_tail_min,
-        draws.divergences,
-        found.worst,
-        draws.retried,
-        found.passed,
-        found.failures,
-    )
-
-
-def _variable_records(case: Case, spec: Spec, stages: Sequence[StageDraws]) -> list[VariableRecord]:
-    used = set(used_variables(case))
-    return [
-        VariableRecord(
-            name=variable.name,
-            label=f"{variable.label}, {variable.zone}" if variable.zone else variable.label,
-            symbol=variable.symbol,
-            unit=variable.unit,
-            zone=variable.zone,
-            source=variable.source,
-            used=variable.name in used,
-            draws={draws.name: draws.physical[..., i] for draws in stages},
-        )
-        for i, variable in enumerate(spec.prior.variables)
-    ]
-
-
-def _data_record(item: DataSet, stages: Sequence[StageDraws]) -> DataRecord:
-    stage = stages[item.stage]
-    absent = any(column.absent for column in item.kind.form.columns)
-    return DataRecord(
-        survey=stage.name,
-        date=stage.date,
-        kind=item.kind.form.key,
-        title=item.kind.form.title,
-        zone=item.zone,
-        unit=item.kind.unit,
-        log_scale=item.kind.log_scale,
-        values=item.values,
-        count=item.count,
-        censored=0 if absent else item.missing,
-        absent=item.missing if absent else 0,
-        sections=item.sections,
-        path="",
-        variable=f"{item.zone}.{item.kind.carrier}",
-        predictive=item.predictive,
-        p_values=item.p_values,
-    )
-
-
-def _assumptions(case: Case) -> list[str]:
-    """Collect what was assumed, each sentence once."""
-    said = [
-        "All variables that a zone shares are updated jointly and their draws stay joint; local "
-        "values differ from place to place within the zone.",
-    ]
-    if case.spec.dependence:
-        pairs = "; ".join(
-            f"{item.between[0]} with {item.between[1]}: {item.measure} {item.coefficient:g} "
-            f"({item.source})"
-            for item in case.spec.dependence
-        )
-        said.append(f"Dependence stated before the surveys: {pairs}.")
-    else:
-        said.append("No dependence between common variables was stated before the surveys.")
-    kinds = dict.fromkeys(item.kind for item in case.evidence)
-    said += [KINDS[kind].assumption for kind in kinds]
-    for entry in case.spec.sections().values():
-        said += LIMIT_STATES[entry.limit_state].assumptions(entry, case.spec)
-    return list(dict.fromkeys(said))
-
-
 def _write(
     record: RunRecord,
     provenance: Provenance,
     stages: Sequence[StageDraws],
     spec: Spec,
-    settings: Settings,
-    case: Case,
+    key: str,
     out: Path,
     observe: Observer,
     clock: _Clock,
 ) -> RunRecord:
     """Write all files of a run into its folder, whole."""
-    from dataclasses import replace
-
     from assess.report.summary import write_summary
     from assess.report.writer import write_report
 
-    key = store.sampling_key(spec, stage_list(case), settings)
     with store.whole_folder(out) as folder:
         with clock.measure("writing data"):
             observe("writing the draws", 0.0)

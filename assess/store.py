@@ -22,14 +22,27 @@ RELIABILITY = "reliability.nc"
 RUN = "run.json"
 SUMMARY = "summary.csv"
 REPORT = "report.html"
+# What a run may leave; other files in its folder are somebody else's.
+FILES = frozenset(
+    {DRAWS, RELIABILITY, RUN, SUMMARY, REPORT, "report.docx", "report.pdf", "tables.xlsx"}
+)
+CURVES = (
+    "period",
+    "index",
+    "low",
+    "high",
+    "integration_error",
+    "mcmc_error",
+    "failure_probability",
+)
 
 
 @contextmanager
 def whole_folder(target: Path) -> Iterator[Path]:
     """Give a temporary folder that takes the target's place when all went well.
 
-    Files of an earlier run that the new one does not write are kept out of the new folder; a
-    run that fails leaves the earlier folder as it was.
+    Files of an earlier run that the new one does not write go; files that are not of a run stay.
+    A run that fails leaves the earlier folder as it was.
     """
     target.parent.mkdir(parents=True, exist_ok=True)
     fresh = Path(tempfile.mkdtemp(prefix=f".{target.name}-", dir=target.parent))
@@ -42,9 +55,17 @@ def whole_folder(target: Path) -> Iterator[Path]:
             target.rename(old / target.name)
         fresh.rename(target)
         if old is not None:
+            _keep_foreign(old / target.name, target)
             shutil.rmtree(old)
     finally:
         shutil.rmtree(fresh, ignore_errors=True)
+
+
+def _keep_foreign(old: Path, new: Path) -> None:
+    """Carry over what somebody else put into the folder of a run."""
+    for entry in old.iterdir():
+        if entry.name not in FILES and not (new / entry.name).exists():
+            shutil.move(entry, new / entry.name)
 
 
 def sampling_key(spec: Spec, stages: Sequence[tuple[str, str]], settings: Settings) -> str:
@@ -175,31 +196,38 @@ def _stage(node: Any, used: Sequence[str]) -> StageDraws:
 
 
 def write_reliability(record: RunRecord, path: Path) -> None:
-    """Write all index curves of a run as one netCDF file, a group for each result."""
+    """Write all index curves of a run as one netCDF file.
+
+    Parameters
+    ----------
+    record : RunRecord
+        What was found.
+    path : Path
+        File to write: one group for each kind of curve (``annual``, ``cumulative``,
+        ``reference``, and ``independent`` with the dependence dropped), its arrays over
+        ``result`` (a section at a stage under an option, named by coordinates) and ``year``.
+    """
     import xarray as xr
 
     groups: dict[str, Any] = {}
-    for number, item in enumerate(record.results):
-        for kind in ("annual", "cumulative", "reference", "independent"):
-            curve: IndexCurve | None = getattr(item, kind)
-            if curve is None:
-                continue
-            groups[f"/{number:04d}/{kind}"] = xr.Dataset(
-                {
-                    name: ("year", getattr(curve, name))
-                    for name in (
-                        "period",
-                        "index",
-                        "low",
-                        "high",
-                        "integration_error",
-                        "mcmc_error",
-                        "failure_probability",
-                    )
+    for kind in ("annual", "cumulative", "reference", "independent"):
+        chosen = [item for item in record.results if getattr(item, kind) is not None]
+        if not chosen:
+            continue
+        curves: list[IndexCurve] = [getattr(item, kind) for item in chosen]
+        groups[f"/{kind}"] = xr.Dataset(
+            {
+                name: (("result", "year"), np.stack([getattr(curve, name) for curve in curves]))
+                for name in CURVES
+            },
+            coords={
+                "year": curves[0].year,
+                **{
+                    name: ("result", [getattr(item, name) for item in chosen])
+                    for name in ("section", "stage", "option")
                 },
-                coords={"year": curve.year},
-                attrs={"section": item.section, "stage": item.stage, "option": item.option},
-            )
+            },
+        )
     xr.DataTree.from_dict(groups).to_netcdf(path, engine="h5netcdf")
 
 

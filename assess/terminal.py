@@ -1,5 +1,6 @@
 """What a run shows on the terminal: the part at work, a bar, the table at the end."""
 
+import math
 import sys
 import threading
 from collections.abc import Iterator, Sequence
@@ -73,15 +74,19 @@ class RunScreen:
         first, last = record.stages[0].name, record.stages[-1].name
         kept = [r for r in record.results if (r.stage, r.option) == (last, LEAVE)]
         table = Table(title=f"{record.title}: sections, nothing done", title_justify="left")
-        for header in ("section", "before", "after", "5-95 %", f"in {_last_year(kept)}", "verdict"):
+        surveyed = first != last
+        indices = ("before", "after") if surveyed else ("index",)
+        for header in ("section", *indices, "5-95 %", f"in {_last_year(kept)}", "verdict"):
             side: JustifyMethod = "left" if header in {"section", "verdict"} else "right"
             table.add_column(header, justify=side)
         for item in kept:
-            table.add_row(*_row(item, record.result(item.section, first)))
+            before = record.result(item.section, first) if surveyed else None
+            table.add_row(*_row(item, before))
         console.print(table)
         end = f" to {record.assessed + wanted.period - 1}" if wanted.period > 1 else ""
         console.print(
-            f"Reliability index of {record.assessed}{end}, before and after the surveys; 5-95 %: "
+            f"Reliability index of {record.assessed}{end}, "
+            f"{'before and after the surveys' if surveyed else 'no survey counted'}; 5-95 %: "
             "range of the index were the variables known that a zone shares."
         )
         console.print(
@@ -105,7 +110,7 @@ def _last_year(results: Sequence[SectionResult]) -> int:
     return int(results[0].reference.year[-1])
 
 
-def _row(item: SectionResult, before: SectionResult) -> list[str]:
+def _row(item: SectionResult, before: SectionResult | None) -> list[str]:
     curve = item.reference
     verdict = item.verdict
     words = SHORT[verdict.standing].format(
@@ -116,12 +121,19 @@ def _row(item: SectionResult, before: SectionResult) -> list[str]:
     )
     return [
         item.section,
-        f"{before.reference.index[0]:.2f}",
-        f"{curve.index[0]:.2f} ± {curve.error[0]:.2f}",
+        *([] if before is None else [f"{before.reference.index[0]:.2f}"]),
+        _with_error(float(curve.index[0]), float(curve.error[0])),
         f"{curve.low[0]:.2f} to {curve.high[0]:.2f}",
         f"{curve.index[-1]:.2f}",
         words,
     ]
+
+
+def _with_error(index: float, error: float) -> str:
+    """Index and its error, rounded up, for no error is zero."""
+    if not math.isfinite(error):
+        return f"{index:.2f}"
+    return f"{index:.2f} ± {math.ceil(100.0 * error - 1e-9) / 100.0:.2f}"
 
 
 def _options(record: RunRecord, stage: str) -> Iterator[str]:

@@ -21,7 +21,7 @@ FLOORS = (
     ("reliability",),
     ("decisions",),
     ("report",),
-    ("vocabulary", "store"),
+    ("vocabulary", "store", "input_checks", "recording"),
     ("pipeline", "starter", "terminal"),
     ("cli",),
 )

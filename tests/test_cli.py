@@ -254,12 +254,14 @@ BAD: dict[str, tuple[Changes, str]] = {
                 ("period: 1 ", "period: 50 "),
             ]
         },
-        r"{CASE}.*: decision.target: the reference period must be whole years within the horizon, "
+        r"{CASE}:150: decision.target.period: the reference period must be whole years within the "
+        "horizon, "
         "given 50, allowed 1 to 30, take a target of another period or a longer horizon",
     ),
     "target of no such period": (
         {CASE: [("period: 1 ", "period: 2 ")]},
-        r"decision.target: .*no reference period of 2 years; known: 1 \(targets are not converted",
+        r"{CASE}:150: decision.target.period: .*no target of this reference period, given 2, "
+        "allowed 1, targets are not converted",
     ),
     "target class unknown": (
         {CASE: [("class: large consequences, high", "class: huge consequences, high")]},

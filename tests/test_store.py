@@ -227,6 +227,17 @@ def test_new_folder_takes_the_place_of_the_old_one(tmp_path: Path) -> None:
     assert (target / "run.json").read_text(encoding="utf-8") == "new"
 
 
+def test_files_of_others_stay_and_stale_files_of_a_run_go(tmp_path: Path) -> None:
+    target = tmp_path / "b"
+    (target / "photos").mkdir(parents=True)
+    (target / "photos" / "pier.jpg").write_text("picture", encoding="utf-8")
+    (target / "notes.txt").write_text("mine", encoding="utf-8")
+    (target / store.SUMMARY).write_text("stale", encoding="utf-8")
+    with store.whole_folder(target) as fresh:
+        (fresh / store.RUN).write_text("new", encoding="utf-8")
+    assert names(tmp_path) == ["b", "b/notes.txt", "b/photos", "b/photos/pier.jpg", "b/run.json"]
+
+
 @pytest.mark.parametrize("error", [ValueError("spoilt"), KeyboardInterrupt("stopped")])
 def test_failure_leaves_the_old_folder(tmp_path: Path, error: BaseException) -> None:
     target = tmp_path / "b"

@@ -121,6 +121,25 @@ def test_every_section_has_a_row(record: RunRecord, shown: Shown) -> None:
     assert cells(text, "D")[-1] == "below target now"
 
 
+def test_an_error_is_never_shown_as_zero(record: RunRecord, shown: Shown) -> None:
+    first, *others = record.results
+    small = replace(
+        first.reference,
+        integration_error=np.full(len(first.reference.year), 0.001),
+        mcmc_error=np.full(len(first.reference.year), 0.002),
+    )
+    results = [replace(item, reference=small) for item in (first, *others)]
+    assert "± 0.01" in cells(shown(replace(record, results=results)), "A")[2]
+
+
+def test_a_run_without_surveys_has_one_index(record: RunRecord, shown: Shown) -> None:
+    results = [item for item in record.results if item.stage == record.stages[0].name]
+    alone = replace(record, stages=record.stages[:1], results=results)
+    text = " ".join(shown(alone).split())
+    assert "no survey counted" in text
+    assert "before" not in text
+
+
 def test_what_the_figures_are_stands_beside_them(record: RunRecord, shown: Shown) -> None:
     text = " ".join(shown(record).split())
     assert "Reliability index of 2026, before and after the surveys" in text

@@ -19,6 +19,7 @@ from assess.errors import Fault
 
 _ISO_DATE: TypeAdapter[date] = TypeAdapter(IsoDate)
 _BUILT: TypeAdapter[date] = TypeAdapter(Built)
+_LONGEST = 200  # years of horizon that the model allows
 ALL = "all"  # in place of a name: every one of them
 
 
@@ -49,6 +50,7 @@ def cross_check(
         *_repeated_names(document),
         *_grades(document, vocabulary),
         *_target(document, vocabulary),
+        *_assessment(document),
         *_option_years(document),
         *dependence_faults(document),
     ]
@@ -200,7 +202,19 @@ def _years(document: Document) -> tuple[date | None, int | None, int]:
     structure = mapping_at(document.data, "structure")
     built = read_or_none(_BUILT.validate_python, structure.get("built"))
     assessed, horizon = (_whole(structure.get(key)) for key in ("assessed", "horizon"))
-    return built, assessed, 200 if horizon is None else horizon
+    if built and assessed and assessed < built.year:
+        assessed = None  # complained of once, not by all that follows from it
+    return built, assessed, horizon if horizon and 1 <= horizon <= _LONGEST else _LONGEST
+
+
+def _assessment(document: Document) -> Iterator[Fault]:
+    structure = mapping_at(document.data, "structure")
+    built = read_or_none(_BUILT.validate_python, structure.get("built"))
+    assessed = _whole(structure.get("assessed"))
+    if built and assessed is not None and assessed < built.year:
+        what, allowed = "the assessment lies before the construction", f"{built.year} or later"
+        keys = ("structure", "assessed")
+        yield document.fault(keys, what, given=assessed, allowed=allowed, mend="check both years")
 
 
 def _whole(value: Any) -> int | None:
@@ -241,8 +255,10 @@ def _option_years(document: Document) -> Iterator[Fault]:
     for index, option in items_at(mapping_at(document.data, "decision"), "options"):
         for key in ("from", "from_year"):
             year = _whole(option.get(key))
-            if year is not None and not assessed <= year <= assessed + horizon:
+            last = assessed + horizon - 1  # the horizon counts the year assessed
+            if year is not None and not assessed <= year <= last:
                 what = "the option starts outside the years that are looked at"
-                allowed = f"{assessed} to {assessed + horizon}"
                 keys = ("decision", "options", index, key)
-                yield document.fault(keys, what, given=year, allowed=allowed)
+                mend = "the horizon counts the year of the assessment"
+                allowed = f"{assessed} to {last}"
+                yield document.fault(keys, what, given=year, allowed=allowed, mend=mend)

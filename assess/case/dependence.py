@@ -70,8 +70,6 @@ def dependence_faults(document: Document) -> Iterator[Fault]:
     Fault
         Each with its line.
     """
-    from assess.probability.dependence import NotPositiveDefiniteError, score_correlation_matrix
-
     known = known_variables(document.data)
     marginals = _Marginals(document.data, known)
     pairs: list[PairDependence] = []
@@ -95,10 +93,36 @@ def dependence_faults(document: Document) -> Iterator[Fault]:
             elif pair is not None:
                 pairs.append(pair)
         seen.setdefault(both, document.line(keys))
+    if all(marginals.settle(pair) for pair in pairs):
+        names = {name for pair in pairs for name in (pair.first, pair.second)}
+        yield from matrix_faults(document, pairs, marginals.of(names))
+
+
+def matrix_faults(
+    document: Document, pairs: "list[PairDependence]", marginals: "Mapping[str, Marginal]"
+) -> Iterator[Fault]:
+    """Find out whether coefficients that are sound one by one hold together.
+
+    Parameters
+    ----------
+    document : Document
+        The case file.
+    pairs : list of PairDependence
+        Each with a score coefficient.
+    marginals : mapping
+        Marginals by name, of the variables with a Pearson coefficient at least.
+
+    Yields
+    ------
+    Fault
+        One at most, in the line of ``dependence:``, with the nearest coefficients that hold.
+    """
+    from assess.probability.dependence import NotPositiveDefiniteError, score_correlation_matrix
+
     names = sorted({name for pair in pairs for name in (pair.first, pair.second)})
     try:
         if pairs:
-            score_correlation_matrix(names, pairs, marginals.of(names))
+            score_correlation_matrix(names, pairs, marginals)
     except NotPositiveDefiniteError as error:
         what = "these coefficients cannot hold together: their matrix is not positive definite"
         given = "; ".join(_in_words(pair, pair.coefficient) for pair in pairs)
@@ -151,7 +175,8 @@ def _pair(
         if value is not None and -1.0 < value < 1.0:
             pair = PairDependence(first, second, value, kind)
             try:
-                pair.score(marginals.of((first, second)))
+                if marginals.settle(pair):
+                    pair.score(marginals.of((first, second)))
             except ValueError as error:
                 return document.fault((*keys, kind), str(error))
             return pair
@@ -161,20 +186,23 @@ def _pair(
 class _Marginals:
     """Marginals of common variables where the file says them outright.
 
-    Others (those that follow from a grade, a nominal cover, a steel) count as normal here: their
-    Pearson coefficient is then the score coefficient. The prior checks with the true ones.
+    Others follow from a grade, a nominal cover, a steel: a Pearson coefficient of these is left
+    to the checks that know the whole prior.
     """
 
     def __init__(self, data: Mapping[Any, Any], known: Mapping[str, Keys]) -> None:
         self._data, self._known = data, known
 
     def of(self, names: Any) -> "dict[str, Marginal]":
-        """Give the marginals of some variables."""
-        return {name: self._one(name) for name in names}
+        """Give the marginals of some variables, those that are said."""
+        found = {name: self._one(name) for name in names}
+        return {name: marginal for name, marginal in found.items() if marginal is not None}
 
-    def _one(self, name: str) -> "Marginal":
-        from assess.probability.marginals import make_marginal
+    def settle(self, pair: "PairDependence") -> bool:
+        """Tell whether the score coefficient of a pair follows from what is said."""
+        return pair.kind != "pearson" or len(self.of((pair.first, pair.second))) == 2
 
+    def _one(self, name: str) -> "Marginal | None":
         said = _SAID.get(name.rpartition(".")[2])
         if said and self._known[name][0] == "zones":
             part, key, model = said
@@ -182,4 +210,4 @@ class _Marginals:
             read: BaseModel | None = read_or_none(model.model_validate, node)
             if isinstance(read, Distribution):
                 return read.marginal()
-        return make_marginal("normal", mean=0.0, sd=1.0)
+        return None

@@ -6,7 +6,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from assess import units
-from assess.case.forms import Column, EvidenceForm, FloatArray, Table
+from assess.case.forms import (
+    Column,
+    EvidenceEntry,
+    EvidenceForm,
+    FloatArray,
+    Table,
+    TextArray,
+)
 from assess.errors import Fault
 
 SHOWN = 5  # doubts of one sort that are listed singly
@@ -21,6 +28,7 @@ class Written:
     column: Column
     unit: str  # of the header; "-" for none
     values: FloatArray  # in the column's unit; NaN where there is no number
+    refused: FloatArray | None = None  # numbers that the column does not allow; NaN elsewhere
 
     @property
     def scale(self) -> float:
@@ -34,7 +42,28 @@ class Written:
 
     def show_range(self, low: float, high: float) -> str:
         """Show a range in the header's unit."""
-        return f"{low / self.scale:.3g} to {self.show(high)}"
+        return f"{low / self.scale:.4g} to {self.show(high)}"
+
+
+def written_column(form: EvidenceForm, table: Table, name: str) -> Written:
+    """Take a column of a table as it stands in its file.
+
+    Parameters
+    ----------
+    form : EvidenceForm
+        Kind of evidence.
+    table : Table
+        As read.
+    name : str
+        One of the form's number columns.
+
+    Returns
+    -------
+    Written
+        Shows values in the header's unit.
+    """
+    column = next(one for one in form.columns if one.name == name)
+    return Written(column, table.units.get(name, column.unit or units.NONE), table.numbers[name])
 
 
 def capped(doubts: Sequence[Fault], what: str) -> list[Fault]:
@@ -59,46 +88,71 @@ def capped(doubts: Sequence[Fault], what: str) -> list[Fault]:
     return [*doubts[:SHOWN], more]
 
 
-def unusual(table: Table, header_line: int, written: Written) -> tuple[list[Fault], list[Fault]]:
-    """Look for values that are out of the ordinary, and for a unit that would explain them.
+def mistaken_unit(file: str, header_line: int, written: Written) -> Fault | None:
+    """Look whether a whole column stands in another unit than its header says.
+
+    Parameters
+    ----------
+    file : str
+        The table's file.
+    header_line : int
+        Line of its header.
+    written : Written
+        The column, with the numbers that were refused.
+
+    Returns
+    -------
+    Fault or None
+        If the column's median is unusual but would be usual in another customary unit.
+    """
+    numbers = written.values
+    if written.refused is not None:
+        numbers = np.where(np.isfinite(numbers), numbers, written.refused)
+    known = numbers[np.isfinite(numbers)]
+    if written.column.usual is None or not len(known):
+        return None
+    median = float(np.median(known))
+    looks = other_units(written, median)
+    if not looks:
+        return None
+    what = (
+        f"column {written.column.name!r} looks like {looks} under {_article(written.unit)} header"
+    )
+    given = f"a median of {written.show(median)}"
+    allowed = f"usually {written.show_range(*written.column.usual)}"
+    return Fault(file, header_line, what, given, allowed, "correct the header's unit")
+
+
+def unusual(table: Table, written: Written) -> list[Fault]:
+    """Doubt each value that is out of the ordinary, saying which unit would explain it.
 
     Parameters
     ----------
     table : Table
         The table.
-    header_line : int
-        Line of its header.
     written : Written
         The column; checked if it has a usual range.
 
     Returns
     -------
-    faults : list of Fault
-        One, if the column's median is unusual but would be usual in another customary unit.
-    doubts : list of Fault
-        Otherwise, one for each unusual value.
+    list of Fault
+        Doubts.
     """
     column, usual = written.column, written.column.usual
-    known = np.isfinite(written.values)
-    if usual is None or not known.any():
-        return [], []
-    low, high = usual
-    file, about = str(table.path), f"column {column.name!r}"
-    allowed = f"usually {written.show_range(low, high)}"
-    median = float(np.median(written.values[known]))
-    if looks := _other_units(written, median):
-        what = f"{about} looks like {looks} under {_article(written.unit)} header"
-        given = f"a median of {written.show(median)}"
-        return [Fault(file, header_line, what, given, allowed, "correct the header's unit")], []
-    outside = known & ((written.values < low) | (written.values > high))
+    if usual is None:
+        return []
+    about = f"column {column.name!r}"
+    allowed = f"usually {written.show_range(*usual)}"
+    outside = (written.values < usual[0]) | (written.values > usual[1])  # False for NaN
     doubts = []
     for row in np.flatnonzero(outside):
         value = float(written.values[row])
-        looks = _other_units(written, value)
+        looks = other_units(written, value)
         mend = f"written in {looks}?" if looks else ""
         what = f"{about} is out of the usual range"
-        doubts.append(Fault(file, int(table.lines[row]), what, written.show(value), allowed, mend))
-    return [], capped(doubts, f"values of {about} out of the usual range")
+        line = int(table.lines[row])
+        doubts.append(Fault(str(table.path), line, what, written.show(value), allowed, mend))
+    return capped(doubts, f"values of {about} out of the usual range")
 
 
 def _article(unit: str) -> str:
@@ -108,17 +162,34 @@ def _article(unit: str) -> str:
     return f"{'an' if letter in 'aeiou' or unit.startswith('N') else 'a'} {unit}"
 
 
-def _other_units(written: Written, value: float) -> str:
-    """Name the customary units in which an unusual value would be usual."""
+def other_units(written: Written, value: float) -> str:
+    """Name the customary units in which an odd value would be usual, or at least allowed.
+
+    Parameters
+    ----------
+    written : Written
+        The column.
+    value : float
+        In the column's unit.
+
+    Returns
+    -------
+    str
+        ``psi or kPa``; nothing if the value is not odd or no unit explains it.
+    """
     column = written.column
-    if column.usual is None or column.usual[0] <= value <= column.usual[1]:
+    low, high = column.usual or (
+        -np.inf if column.above is None else column.above,
+        np.inf if column.below is None else column.below,
+    )
+    if low <= value <= high:
         return ""
     inside = column.unit or units.NONE
     number = value / written.scale  # as it stands in the file
     fits = [
         unit
         for unit in units.CUSTOMARY.get(units.plain(inside), ())
-        if column.usual[0] <= number * units.factor(unit, inside) <= column.usual[1]
+        if low <= number * units.factor(unit, inside) <= high
     ]
     return " or ".join(fits)
 
@@ -165,22 +236,27 @@ def repeated(form: EvidenceForm, table: Table) -> list[Fault]:
     return capped(doubts, "repeated rows")
 
 
-def outliers(form: EvidenceForm, table: Table, written: Written) -> list[Fault]:
-    r"""Look for values that lie far from the others of their table.
+def outliers(
+    form: EvidenceForm, entry: EvidenceEntry, table: Table, zone: TextArray
+) -> list[Fault]:
+    r"""Look for values that lie far from the others of their zone in one table.
 
     Parameters
     ----------
     form : EvidenceForm
-        Kind of evidence: its value column is judged, on the logarithm where it says so.
+        Kind of evidence: its value column, or what it derives from it, is judged, on the
+        logarithm where it says so.
+    entry : EvidenceEntry
+        What the survey says of the table.
     table : Table
         The table.
-    written : Written
-        Its value column.
+    zone : ndarray of str, shape (n_row,)
+        Zone of each row: zones differ, so each is judged by itself.
 
     Returns
     -------
     list of Fault
-        Doubts; none with fewer than eight values or where half of them are equal.
+        Doubts; none of a zone with fewer than eight values or where half of them are equal.
 
     Notes
     -----
@@ -192,26 +268,39 @@ def outliers(form: EvidenceForm, table: Table, written: Written) -> list[Fault]:
     .. [1] B. Iglewicz, D. C. Hoaglin, How to Detect and Handle Outliers, ASQC Quality Press,
        1993, section 3.
     """
-    values = written.values
-    known = np.isfinite(values) & ((values > 0.0) | (not form.log_scale))
-    if np.count_nonzero(known) < FEWEST_FOR_OUTLIERS:
-        return []
-    judged = np.log(values[known]) if form.log_scale else values[known]
+    written = written_column(form, table, form.value)
+    judged, about = written.values, form.value
+    if form.judged is not None:
+        judged, about = form.judged.of(entry, table), form.judged.what
+    known = np.isfinite(judged) & ((judged > 0.0) | (not form.log_scale))
+    names = sorted(set(zone.tolist()))
+    doubts = []
+    for name in names:
+        rows = np.flatnonzero(known & (zone == name))
+        where = f" in {name!r}" if len(names) > 1 else ""
+        scores, middle = _modified_scores(judged[rows], form.log_scale)
+        for row, score in zip(rows, scores, strict=True):
+            if abs(score) > LARGEST_SCORE:
+                what = (
+                    f"{about} lies far from the others: modified z-score {score:.1f} around a "
+                    f"median of {written.show(middle)}{where}"
+                )
+                given = written.show(float(judged[row]))
+                allowed = f"usually up to {LARGEST_SCORE:g} either way"
+                line = int(table.lines[row])
+                doubts.append(
+                    Fault(str(table.path), line, what, given, allowed, "check the record")
+                )
+    return capped(sorted(doubts), "values far from the others")
+
+
+def _modified_scores(values: FloatArray, log_scale: bool) -> tuple[FloatArray, float]:
+    """Give the modified z-scores and the median, zeros where nothing can be said."""
+    if len(values) < FEWEST_FOR_OUTLIERS:
+        return np.zeros(len(values)), 0.0
+    judged = np.log(values) if log_scale else values
     distance = judged - np.median(judged)
     spread = float(np.median(np.abs(distance)))
     if not spread > 0.0:
-        return []
-    scores = 0.6745 * distance / spread  # [1]
-    middle = written.show(float(np.median(values[known])))
-    doubts = []
-    for row, score in zip(np.flatnonzero(known), scores, strict=True):
-        if abs(score) > LARGEST_SCORE:
-            what = (
-                f"{form.value} lies far from the others: modified z-score {score:.1f} around a "
-                f"median of {middle}"
-            )
-            given = written.show(float(values[row]))
-            allowed = f"usually up to {LARGEST_SCORE:g} either way"
-            line = int(table.lines[row])
-            doubts.append(Fault(str(table.path), line, what, given, allowed, "check the record"))
-    return capped(doubts, "values far from the others")
+        return np.zeros(len(values)), 0.0
+    return 0.6745 * distance / spread, float(np.median(values))  # [1] of `outliers`

@@ -87,6 +87,7 @@ class Table:
     texts: Mapping[str, TextArray]  # "" where empty
     beyond: Mapping[str, FloatArray] = field(default_factory=dict)  # the 80 of ">80", else NaN
     absent: Mapping[str, BoolArray] = field(default_factory=dict)  # True at "none found"
+    units: Mapping[str, str] = field(default_factory=dict)  # of the headers, as written
 
     def __len__(self) -> int:
         """Count the measurements."""
@@ -102,6 +103,14 @@ def no_doubts(_entry: EvidenceEntry, _table: Table) -> Sequence[Fault]:
 
 
 @dataclass(frozen=True, slots=True)
+class Judged:
+    """What outliers are looked for in, where that is not the value column as it stands."""
+
+    what: str  # in words: "loss of diameter"
+    of: Callable[[EvidenceEntry, Table], FloatArray]  # in the value column's unit, NaN for none
+
+
+@dataclass(frozen=True, slots=True)
 class EvidenceForm:
     """A kind of evidence as the case format sees it."""
 
@@ -111,7 +120,19 @@ class EvidenceForm:
     columns: tuple[Column, ...]  # beside the common `location`, `zone`, `section`, `note`
     value: str  # name of the column that outlier and duplicate checks look at
     log_scale: bool = False  # outliers are judged on the logarithm
+    judged: Judged | None = None  # left out: the value column is judged
     doubts: Doubter = no_doubts
+
+
+@dataclass(frozen=True, slots=True)
+class Complaint:
+    """What is wrong with an entry that can be read; `keys` lead to it from the entry."""
+
+    keys: tuple[str | int, ...]
+    what: str
+    given: str = ""
+    allowed: str = ""
+    mend: str = ""
 
 
 @dataclass(frozen=True, slots=True)

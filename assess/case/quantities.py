@@ -15,6 +15,8 @@ from pydantic_core import CoreSchema, core_schema
 from assess import units
 from assess.units import NONE, QuantityError
 
+_LARGEST = 1e20  # in any unit of the tool: nothing built comes near, and squares stay finite
+
 
 @dataclass(frozen=True, slots=True)
 class InUnit:
@@ -29,10 +31,15 @@ class InUnit:
     at_least: float = -math.inf  # allowed: value >= at_least
     below: float = math.inf  # allowed: value < below
     at_most: float = math.inf  # allowed: value <= at_most
+    usual: tuple[float, float] | None = None  # outside: a doubt
 
     def read(self, value: object) -> float:
         """Read a value, raising `QuantityError` where it cannot be used."""
         number = units.convert(value, self.unit)
+        if abs(number) > _LARGEST:
+            unit = "" if self.unit == NONE else f" {self.unit}"
+            what, allowed = f"{self.name} is out of all proportion", f"up to {_LARGEST:g}{unit}"
+            raise QuantityError(what, str(value)[:40], allowed, "check the number and its unit")
         if self._holds(number):
             return number
         mend = ""
@@ -86,6 +93,14 @@ class InUnit:
 
 Length = Annotated[float, InUnit("mm", "a length", above=0.0)]
 Stress = Annotated[float, InUnit("MPa", "a stress or strength", above=0.0)]
+# Usual ranges of what reinforced concrete is made of: generous, to catch another unit.
+ConcreteStrength = Annotated[
+    float, InUnit("MPa", "a stress or strength", above=0.0, usual=(5.0, 150.0))
+]
+YieldStrength = Annotated[
+    float, InUnit("MPa", "a stress or strength", above=0.0, usual=(150.0, 1200.0))
+]
+CoverDepth = Annotated[float, InUnit("mm", "a length", above=0.0, usual=(5.0, 150.0))]
 Moment = Annotated[float, InUnit("N*mm", "a moment", at_least=0.0)]
 Force = Annotated[float, InUnit("N", "a force", at_least=0.0)]
 CurrentDensity = Annotated[float, InUnit("µA/cm^2", "a current density", above=0.0)]
@@ -94,5 +109,6 @@ Number = Annotated[float, InUnit(NONE, "a number")]
 PositiveNumber = Annotated[float, InUnit(NONE, "the number", above=0.0)]
 Fraction = Annotated[float, InUnit(NONE, "a fraction", at_least=0.0, at_most=1.0)]
 CoefficientOfVariation = Annotated[
-    float, InUnit(NONE, "a coefficient of variation", above=0.0, at_most=2.0)
+    float,
+    InUnit(NONE, "a coefficient of variation", above=0.0, at_most=2.0, usual=(0.0, 1.0)),
 ]

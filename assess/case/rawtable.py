@@ -5,14 +5,16 @@ import io
 import re
 import warnings
 from collections.abc import Iterable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime
 from pathlib import Path
+from typing import Any
 
 from assess.errors import Fault
 
 _ZIP = b"PK\x03\x04"
 _OLD_EXCEL = b"\xd0\xcf\x11\xe0"
+_LEAVE_OUT = "leave the entry out of the survey"
 _UTF_16 = (b"\xff\xfe", b"\xfe\xff")
 _SEPARATOR_LINE = re.compile(r"sep=(.)\s*", re.IGNORECASE)  # first line that Excel may write
 
@@ -27,6 +29,7 @@ class RawTable:
     header: list[str]
     lines: list[int]
     rows: list[list[str]]  # each as long as the header
+    sheets: tuple[str, ...] = ()  # of a workbook, whose first is read
 
 
 class _Unreadable(Exception):
@@ -56,8 +59,17 @@ def read_rows(path: Path) -> tuple[RawTable | None, list[Fault]]:
     file = str(path)
     try:
         raw = _bytes(path)
-        rows = _xlsx_rows(raw) if raw.startswith(_ZIP) else _csv_rows(_text(raw))
-        return _shaped(file, [(line, cells) for line, cells in rows if any(cells)])
+        if raw.startswith(_ZIP):
+            book = _Book(raw)
+            table, faults = _shaped(file, [row for row in book.rows() if any(row[1])])
+            if table is not None:
+                faults += [
+                    Fault(file, line, f"cells {place} are merged", mend="fill each cell instead")
+                    for line, place in book.merged(table.header_line)
+                ]
+                table = replace(table, sheets=book.names)
+            return table, faults
+        return _shaped(file, [row for row in _csv_rows(_text(raw)) if any(row[1])])
     except _Unreadable as error:
         return None, [Fault(file, error.line, error.what, error.given, mend=error.mend)]
 
@@ -72,7 +84,7 @@ def _bytes(path: Path) -> bytes:
     except (OSError, ValueError) as error:
         raise _Unreadable(f"the table cannot be opened: {error}") from None
     if not raw:
-        raise _Unreadable("the table is empty", given="0 bytes")
+        raise _Unreadable("the table is empty", given="0 bytes", mend=_LEAVE_OUT)
     if raw.startswith(_OLD_EXCEL):
         mend = "save it as .xlsx or .csv"
         raise _Unreadable("this is a workbook of the old binary format", mend=mend)
@@ -96,7 +108,7 @@ def _text(raw: bytes) -> str:
         line = text.count("\n", 0, odd.start()) + 1
         raise _Unreadable("the file is not text", line=line, mend="save it as CSV in UTF-8")
     if not text.strip():
-        raise _Unreadable("the table is empty", given="blanks only")
+        raise _Unreadable("the table is empty", given="blanks only", mend=_LEAVE_OUT)
     return text
 
 
@@ -111,7 +123,7 @@ def _csv_rows(text: str) -> Iterator[Row]:
         elif line.strip(' \t\r\n,;"') and not line.lstrip('" \t').startswith("#"):
             break
     else:
-        raise _Unreadable("the table is empty", given="comments only")
+        raise _Unreadable("the table is empty", given="comments only", mend=_LEAVE_OUT)
     header = re.sub(r'"[^"]*"|\[[^\]]*\]|\([^)]*\)', "", lines[start])
     # A tab cannot stand in a cell by accident, so it also serves a table of one column.
     separator = separator or next((mark for mark in "\t;," if mark in header), "\t")
@@ -129,29 +141,56 @@ def _csv_rows(text: str) -> Iterator[Row]:
         raise _Unreadable(what, line=start + before + 1, mend=mend) from None
 
 
-def _xlsx_rows(raw: bytes) -> Iterator[Row]:
-    """Read the first sheet of a workbook, formulas by the values last computed."""
-    import openpyxl  # type: ignore[import-untyped]
+class _Book:
+    """The first sheet of a workbook, formulas by the values last computed."""
 
-    try:
-        with warnings.catch_warnings():
-            warnings.simplefilter("ignore")  # of features that have no bearing on values
-            book = openpyxl.load_workbook(io.BytesIO(raw), read_only=True, data_only=True)
-            sheet = book.worksheets[0]
-            sheet.reset_dimensions()
-            rows = [
-                (number, [_cell(value) for value in values])
-                for number, values in enumerate(sheet.iter_rows(values_only=True), start=1)
-            ]
-            book.close()
-    except Exception as error:  # a damaged workbook fails in the parser's own ways
-        what = f"the file cannot be read as XLSX ({type(error).__name__})"
-        raise _Unreadable(what, mend="open and save it again, or save it as CSV") from None
-    begun = False
-    for number, cells in rows:
-        begun = begun or (any(cells) and not next(filter(None, cells)).startswith("#"))
-        if begun:
-            yield number, cells
+    def __init__(self, raw: bytes) -> None:
+        import openpyxl  # type: ignore[import-untyped]
+
+        def first_sheet(*, computed: bool, streamed: bool) -> Any:
+            stream = io.BytesIO(raw)
+            book = openpyxl.load_workbook(stream, read_only=streamed, data_only=computed)
+            self.names = tuple(sheet.title for sheet in book.worksheets)
+            return book.worksheets[0]
+
+        try:
+            with warnings.catch_warnings():
+                warnings.simplefilter("ignore")  # of features that have no bearing on values
+                values, formulas = (
+                    _streamed_rows(first_sheet(computed=computed, streamed=True))
+                    for computed in (True, False)
+                )
+                whole = first_sheet(computed=True, streamed=False)  # streams hide what is merged
+        except Exception as error:  # a damaged workbook fails in the parser's own ways
+            what = f"the file cannot be read as XLSX ({type(error).__name__})"
+            mend = "open and save it again, or save it as CSV"
+            raise _Unreadable(what, mend=mend) from None
+        # Without a computed value a formula is better shown than called empty.
+        self._rows = [
+            [value or formula for value, formula in zip(*pair, strict=True)]
+            for pair in zip(values, formulas, strict=True)
+        ]
+        self._merged = list(whole.merged_cells.ranges)
+
+    def rows(self) -> Iterator[Row]:
+        """Go through the rows from the first that is no comment."""
+        begun = False
+        for number, cells in enumerate(self._rows, start=1):
+            begun = begun or (any(cells) and not next(filter(None, cells)).startswith("#"))
+            if begun:
+                yield number, cells
+
+    def merged(self, header_line: int) -> list[tuple[int, str]]:
+        """List merged cells from the header on: all but the first of each look empty."""
+        found = [area for area in self._merged if area.max_row >= header_line]
+        return sorted((area.min_row, str(area.coord)) for area in found)
+
+
+def _streamed_rows(sheet: Any) -> list[list[str]]:
+    sheet.reset_dimensions()
+    rows = [[_cell(value) for value in row] for row in sheet.iter_rows(values_only=True)]
+    sheet.parent.close()
+    return rows
 
 
 def _cell(value: object) -> str:
@@ -182,7 +221,7 @@ def _shaped(file: str, rows: list[Row]) -> tuple[RawTable | None, list[Fault]]:
             faults.append(Fault(file, line, what, repr(beyond[0]), mend=mend))
     if not body:
         what = "the table has a header but no rows"
-        faults.append(Fault(file, header_line, what, mend="leave the entry out of the survey"))
+        faults.append(Fault(file, header_line, what, mend=_LEAVE_OUT))
     padded = [(cells + [""] * width)[:width] for _, cells in body]
     return RawTable(header_line, header, [line for line, _ in body], padded), faults
 

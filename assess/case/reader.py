@@ -12,10 +12,12 @@ import numpy as np
 from pydantic import BaseModel, ValidationError
 
 from assess.case import checks
+from assess.case.doubts import outliers
 from assess.case.forms import EvidenceEntry, EvidenceForm, Table, TextArray, Vocabulary
 from assess.case.schema import case_model, spread_defaults
 from assess.case.spec import CaseSpec
 from assess.case.tables import examine_table
+from assess.case.unlikely import unlikely_quantities
 from assess.case.walking import mapping_at
 from assess.case.wording import faults_of
 from assess.case.yamlfile import Document, Keys, listed, nearest, read_yaml
@@ -37,6 +39,7 @@ class Evidence:
     zone: TextArray  # of each row
     section: TextArray  # of each row, "" for none
     location: TextArray  # of each row, "" for none
+    keys: Keys = ()  # where the entry stands in the case file
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -48,6 +51,7 @@ class Case:
     evidence: tuple[Evidence, ...]  # in order of date
     inputs: dict[str, str]  # SHA-256 of each file by its path from the case's folder
     stages: tuple[tuple[str, date], ...]  # name and date after each survey, in order of date
+    document: Document  # the case file, which knows its lines
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -57,6 +61,7 @@ class CaseReading:
     case: Case | None
     faults: tuple[Fault, ...]
     doubts: tuple[Fault, ...]
+    readable: Case | None = None  # what can be checked further, with the sound tables only
 
 
 def load_case(path: Path, vocabulary: Vocabulary) -> Case:
@@ -100,7 +105,8 @@ def read_case(path: Path, vocabulary: Vocabulary, today: date | None = None) -> 
     Returns
     -------
     CaseReading
-        Its case is None if there is any fault.
+        Its case is None if there is any fault; `readable` is None where the case file itself
+        is at fault.
     """
     path = Path(path)
     document, faults = read_yaml(path)
@@ -113,16 +119,22 @@ def read_case(path: Path, vocabulary: Vocabulary, today: date | None = None) -> 
     tables.read()
     faults += wrong + tables.faults
     doubts += tables.doubts
-    evidence = _evidence(spec, tables) if spec is not None else []
-    for one in evidence:
-        doubts += vocabulary.evidence[one.kind].doubts(one.entry, one.table)
-    ordered_doubts = tuple(sorted(set(doubts)))
-    if faults or spec is None:
-        return CaseReading(None, tuple(sorted(set(faults))), ordered_doubts)
-    surveys = sorted(spec.surveys, key=lambda survey: survey.date)
-    stages = tuple((survey.stage, survey.date) for survey in surveys)
-    case = Case(path, spec, tuple(evidence), _hashes(path, evidence), stages)
-    return CaseReading(case, (), ordered_doubts)
+    readable = None
+    if spec is not None:
+        evidence = _evidence(spec, tables)
+        doubts += unlikely_quantities(spec, document)
+        for one in evidence:
+            form = vocabulary.evidence[one.kind]
+            doubts += outliers(form, one.entry, one.table, one.zone)
+            doubts += form.doubts(one.entry, one.table)
+        if not wrong:  # names that lead nowhere would lead further checks astray
+            surveys = sorted(spec.surveys, key=lambda survey: survey.date)
+            stages = tuple((survey.stage, survey.date) for survey in surveys)
+            hashes = _hashes(path, evidence)
+            readable = Case(path, spec, tuple(evidence), hashes, stages, document)
+    all_faults = tuple(sorted(set(faults)))
+    case = None if all_faults else readable
+    return CaseReading(case, all_faults, tuple(sorted(set(doubts))), readable)
 
 
 def _validated(document: Document, vocabulary: Vocabulary) -> tuple[CaseSpec | None, list[Fault]]:
@@ -144,8 +156,14 @@ def _evidence(spec: CaseSpec, tables: "_Tables") -> list[Evidence]:
                 table, zone, section = read
                 location = table.texts["location"]
                 one = (survey.stage, survey.date, age, kind, entry, table, zone, section, location)
-                found.append(Evidence(*one))
+                found.append(Evidence(*one, _entry_keys(tables.document, i, kind, j)))
     return sorted(found, key=lambda one: one.date)
+
+
+def _entry_keys(document: Document, survey: int, kind: str, index: int) -> Keys:
+    """Give the place of an evidence entry; one alone may stand without the list."""
+    alone = isinstance(document.data["surveys"][survey][kind], dict)
+    return ("surveys", survey, kind) if alone else ("surveys", survey, kind, index)
 
 
 def _hashes(path: Path, evidence: list[Evidence]) -> dict[str, str]:
@@ -186,10 +204,14 @@ class _Tables:
             self._one(keys, self.vocabulary.evidence[kind], file, entry)
 
     def _one(self, keys: Keys, form: EvidenceForm, file: Path, entry: dict[Any, Any]) -> None:
-        if not file.exists():  # the line of the case file is what has to be mended
+        try:
+            there = file.exists()
+        except OSError:  # a name that no file system takes
+            there = False
+        if not there:  # the line of the case file is what has to be mended
             what, mend = "there is no such table", "paths start from the case file's folder"
             self.faults.append(
-                self.document.fault((*keys, "table"), what, given=str(file), mend=mend)
+                self.document.fault((*keys, "table"), what, given=_shown(file), mend=mend)
             )
             return
         table, faults, doubts = examine_table(file, form)
@@ -203,6 +225,12 @@ class _Tables:
             zones, sections = _places(self.document, table, entry.get("zone"))
             index = keys[3] if len(keys) > 3 else 0
             self.by_place[keys[1], form.key, index] = (table, zones, sections)  # type: ignore[index]
+
+
+def _shown(file: Path) -> str:
+    """Show a path, cut in the middle where it is longer than a path can be used for."""
+    text = str(file) if str(file).isprintable() else repr(str(file))
+    return text if len(text) <= 300 else f"{text[:30]}...{text[-30:]}"
 
 
 def _places(document: Document, table: Table, zone: Any) -> tuple[TextArray, TextArray]:

@@ -1,7 +1,7 @@
 """The case format for the kinds that exist, and its JSON Schema for editors."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import reduce
 from operator import or_
 from typing import Annotated, Any
@@ -138,7 +138,7 @@ def spread_defaults(document: Document, vocabulary: Vocabulary) -> Document:
         for index, member in enumerate(members)
     ]
     data = {**document.data, "members": spread}
-    return Document(document.file, data, document.lines, moved)
+    return replace(document, data=data, moved=moved)
 
 
 def _spread(

@@ -9,10 +9,19 @@ from collections.abc import Iterator
 from datetime import date
 from typing import Annotated, Any, ClassVar, Literal
 
-from pydantic import BeforeValidator, Discriminator, Field, Tag, WithJsonSchema, model_validator
+from pydantic import (
+    AfterValidator,
+    BeforeValidator,
+    Discriminator,
+    Field,
+    Tag,
+    WithJsonSchema,
+    model_validator,
+)
 
 from assess.case.distributions import (
     CurrentDistribution,
+    Distribution,
     LengthDistribution,
     NumberDistribution,
     YearsDistribution,
@@ -20,11 +29,13 @@ from assess.case.distributions import (
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
 from assess.case.quantities import (
     CoefficientOfVariation,
+    ConcreteStrength,
+    CoverDepth,
     InUnit,
-    Length,
     Number,
     PositiveNumber,
     Stress,
+    YieldStrength,
 )
 from assess.units import NONE, QuantityError
 
@@ -86,13 +97,6 @@ class Structure(Closed):
     invented: bool = Field(False, description="true for an example that no structure stands for")
     description: str | None = Field(None, description="what kind of structure it is")
 
-    @model_validator(mode="after")
-    def _in_order(self) -> "Structure":
-        if self.assessed < self.built.year:
-            what = "the assessment lies before the construction"
-            raise QuantityError(what, str(self.assessed), f"{self.built.year} or later")
-        return self
-
 
 class GradedConcrete(Closed):
     """Concrete known by its grade: the prior is the published one of that grade."""
@@ -105,7 +109,7 @@ class GradedConcrete(Closed):
 class MeasuredConcrete(Closed):
     """Concrete known by a mean strength and the number of tests its knowledge is worth."""
 
-    mean: Stress = Field(description="mean compressive strength")
+    mean: ConcreteStrength = Field(description="mean compressive strength")
     V: CoefficientOfVariation = Field(description="coefficient of variation of the strength")
     equivalent_tests: PositiveNumber = Field(
         description="number of tests that the mean is worth as knowledge"
@@ -123,11 +127,22 @@ class VagueConcrete(Closed):
     source: str | None = Field(None, description="why nothing is known")
 
 
+def _only_positive[D: Distribution](value: D) -> D:
+    """Refuse a distribution that reaches below zero for what has a logarithm or is a scatter."""
+    low, high = value.marginal().support
+    if low < 0.0 or high <= 0.0:
+        what = "must be a distribution of positive values only"
+        given = f"{value.distribution} from {low:.4g} to {high:.4g}"
+        mend = "or cut it off with lower: 0"
+        raise QuantityError(what, given, "such as lognormal or gamma", mend)
+    return value
+
+
 class ScatteredCover(Closed):
     """Cover by the distributions of its mean in the zone and of its scatter in place."""
 
     mean: LengthDistribution = Field(description="the zone's mean cover, as uncertain")
-    scatter: LengthDistribution = Field(
+    scatter: Annotated[LengthDistribution, AfterValidator(_only_positive)] = Field(
         description="standard deviation of the cover from place to place, as uncertain"
     )
 
@@ -135,7 +150,7 @@ class ScatteredCover(Closed):
 class NominalCover(Closed):
     """Cover by its nominal value: the prior is the published one."""
 
-    nominal: Length = Field(description="nominal cover on the drawings")
+    nominal: CoverDepth = Field(description="nominal cover on the drawings")
     source: Text = Field(description="where the nominal cover is stated")
 
 
@@ -186,14 +201,16 @@ Cover = Annotated[
 class Corrosion(Closed):
     """When reinforcement corrosion starts in a zone and how fast it goes."""
 
-    onset: YearsDistribution = Field(
+    onset: Annotated[YearsDistribution, AfterValidator(_only_positive)] = Field(
         description="zone median of the local onset, years after construction"
     )
-    onset_scatter: NumberDistribution = Field(
+    onset_scatter: Annotated[NumberDistribution, AfterValidator(_only_positive)] = Field(
         description="standard deviation of ln(local onset) from place to place"
     )
-    current: CurrentDistribution = Field(description="zone median of the local current density")
-    current_scatter: NumberDistribution = Field(
+    current: Annotated[CurrentDistribution, AfterValidator(_only_positive)] = Field(
+        description="zone median of the local current density"
+    )
+    current_scatter: Annotated[NumberDistribution, AfterValidator(_only_positive)] = Field(
         description="standard deviation of ln(local current density) from place to place"
     )
     attack: Literal["pitting", "uniform"] = Field(description="how the bars lose section")
@@ -223,7 +240,7 @@ class Zone(Closed):
 class Steel(Closed):
     """Reinforcement of one delivery or grade."""
 
-    mean: Stress = Field(description="mean yield strength")
+    mean: YieldStrength = Field(description="mean yield strength")
     sd: Stress = Field(description="standard deviation of that mean: its level is uncertain")
     local_sd: Stress = Field(8.0, description="standard deviation from bar to bar")
     source: Text = Field(description="where the yield strength comes from")

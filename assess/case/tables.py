@@ -24,6 +24,7 @@ COMMON = (
 _UNCHECKED = Column("", "a column whose unit is unknown")
 _NOTES = {"note", "notes", "remark", "remarks"}
 _MOST_FAULTS = 20  # of one column
+_Complaint = tuple[str, str, str, str]  # what, given, allowed, mend
 _COMMA_NUMBER = re.compile(r"[+-]?\d*,\d+(?:[eE][+-]?\d+)?|[+-]?\d+,")
 _BEYOND = re.compile(r"(?:>=|>|≥)\s*(.+)")
 
@@ -47,8 +48,8 @@ def read_table(
     faults : tuple of Fault
         What makes the table unusable, each with its line.
     doubts : tuple of Fault
-        What can be read but should be looked at. What the form itself doubts is not in here, as
-        it needs the entry of the case file.
+        What can be read but should be looked at. Outliers and what the form itself doubts are
+        not in here, as they need the entry of the case file.
     """
     table, faults, doubts = examine_table(path, form)
     return (None if faults else table), faults, doubts
@@ -71,7 +72,7 @@ def examine_table(
     table : Table or None
         What could be read, NaN elsewhere: for further checks only, if there is any fault.
     faults, doubts : tuple of Fault
-        As for `read_table`; repetition and outliers are looked for in sound tables only.
+        As for `read_table`; repetition is looked for in sound tables only.
     """
     raw, faults = read_rows(path)
     if raw is None:
@@ -80,17 +81,14 @@ def examine_table(
     reading.headers()
     reading.cells()
     lines = np.array(raw.lines, dtype=np.int64)
-    table = Table(path, lines, reading.numbers, reading.texts, reading.beyond, reading.absent)
+    head = {written.column.name: written.unit for written in reading.written}
+    table = Table(path, lines, reading.numbers, reading.texts, reading.beyond, reading.absent, head)
     doubts = list(reading.doubts)
     for written in reading.written:
-        wrong, odd = doubting.unusual(table, raw.header_line, written)
-        reading.faults += wrong
-        doubts += odd
+        if written.column.name not in reading.mistaken:
+            doubts += doubting.unusual(table, written)
     if not reading.faults:
         doubts += doubting.repeated(form, table)
-        for written in reading.written:
-            if written.column.name == form.value:
-                doubts += doubting.outliers(form, table, written)
     return table, tuple(sorted(set(reading.faults))), tuple(sorted(set(doubts)))
 
 
@@ -120,6 +118,7 @@ class _Reading:
     beyond: dict[str, FloatArray] = field(default_factory=dict)
     absent: dict[str, BoolArray] = field(default_factory=dict)
     written: list[doubting.Written] = field(default_factory=list)
+    mistaken: set[str] = field(default_factory=set)  # columns in another unit than the header's
 
     def fault(
         self, line: int, what: str, given: str = "", allowed: str = "", mend: str = ""
@@ -146,12 +145,23 @@ class _Reading:
                 self.fault(line, f"column {name!r} stands twice", mend="keep one of the two")
             elif name:
                 self._place(columns[name], index, unit)
+        if not self.places and not misspelt - {""}:
+            self._no_header()
+            return
         for column in self.form.columns:
             if column.required and column.name not in {*self.places, *misspelt}:
-                head = column.name + (f" [{column.unit}]" if column.unit else "")
-                self.fault(
-                    line, f"column {column.name!r} is missing", mend=f"add {head}: {column.what}"
-                )
+                what = f"column {column.name!r} is missing"
+                self.fault(line, what, mend=f"add {_head(column)}: {column.what}")
+
+    def _no_header(self) -> None:
+        """Say once that the first line is no header: a title, another sheet, another file."""
+        what = f"this line is no header of a table of {self.form.title}"
+        given = repr("; ".join(filter(None, self.raw.header))[:60])
+        allowed = listed(_head(column) for column in self.form.columns)
+        mend = "is it a title? begin it with #, or delete it"
+        if others := listed(self.raw.sheets[1:]) if len(self.raw.sheets) > 1 else "":
+            mend = f"only the first sheet is read ({self.raw.sheets[0]}): the table in {others}?"
+        self.faults[:] = [Fault(self.file, self.raw.header_line, what, given, allowed, mend)]
 
     def _place(self, column: Column, index: int, unit: str | None) -> None:
         place = self.places[column.name] = _Place(index)
@@ -226,10 +236,10 @@ class _Reading:
     def _number_column(
         self, column: Column, cells: list[str], wanted: bool, place: _Place | None
     ) -> None:
-        values = np.full(len(cells), np.nan)
-        beyond = np.full(len(cells), np.nan)
+        values, refused, beyond = (np.full(len(cells), np.nan) for _ in range(3))
         absent = np.zeros(len(cells), dtype=bool)
         complaints: list[tuple[int, str, str, str, str]] = []
+        outside: dict[int, _Complaint] = {}
         words = {word.lower() for word in column.absent}
         factor, unit = (place.factor, place.unit) if place else (1.0, units.NONE)
         sound = place is not None and place.sound
@@ -250,19 +260,36 @@ class _Reading:
                 complaint = check(number, cell)
                 if complaint is None:
                     (beyond if limit else values)[row] = number
+                else:
+                    outside[row], refused[row] = complaint, number
             else:
-                complaint = _no_number(cell, number, column)
-            if complaint is not None:
-                complaints.append((row, *complaint))
-        self._complain(column, complaints)
+                complaints.append((row, *_no_number(cell, number, column)))
+        if sound:
+            written = doubting.Written(column, unit, values, refused)
+            self.written.append(written)
+            outside = self._in_other_units(written, outside)
+        self._complain(column, sorted([*complaints, *((row, *c) for row, c in outside.items())]))
         self._mixed(column, cells)
         self.numbers[column.name] = values
         if column.censored:
             self.beyond[column.name] = beyond
         if column.absent:
             self.absent[column.name] = absent
-        if sound:
-            self.written.append(doubting.Written(column, unit, values))
+
+    def _in_other_units(
+        self, written: doubting.Written, outside: dict[int, _Complaint]
+    ) -> dict[int, _Complaint]:
+        """Say which unit explains numbers that are out of range; once, if it is the header's."""
+        if fault := doubting.mistaken_unit(self.file, self.raw.header_line, written):
+            self.faults.append(fault)
+            self.mistaken.add(written.column.name)
+            return {}
+        said = {}
+        for row, (what, given, allowed, mend) in outside.items():
+            number = float(written.refused[row]) if written.refused is not None else math.nan
+            looks = doubting.other_units(written, number)
+            said[row] = (what, given, allowed, f"written in {looks}?" if looks else mend)
+        return said
 
     def _mixed(self, column: Column, cells: list[str]) -> None:
         """Doubt a column that has both decimal commas and decimal points."""
@@ -277,7 +304,8 @@ class _Reading:
             )
 
 
-_Complaint = tuple[str, str, str, str]  # what, given, allowed, mend
+def _head(column: Column) -> str:
+    return column.name + (f" [{column.unit}]" if column.unit else "")
 
 
 def _with_article(what: str) -> str:
@@ -308,6 +336,12 @@ def _no_number(cell: str, kind: str, column: Column) -> _Complaint:
     if column.censored:
         allowed += ", or such as >80 for at least that much"
     mend = ""
+    if cell.startswith("="):
+        what = "a formula that was never computed"
+        return what, shown, allowed, "open and save the workbook in a spreadsheet program"
+    if re.fullmatch(r"\d{4}-\d\d-\d\d[ T]?[\d:.]*", cell):
+        mend = "a date? give the cells the format of numbers, and type the number anew"
+        return "a date where a number is wanted", shown, allowed, mend
     if _BEYOND.fullmatch(cell):
         return "cannot be a bound", shown, allowed, mend
     if re.fullmatch(r"[+-]?\d{1,3}([.,' ]\d{3})+([.,]\d+)?", cell):

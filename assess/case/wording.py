@@ -205,8 +205,26 @@ def _missing(error: _Error) -> Fault:
 
 def _unknown(error: _Error) -> Fault:
     known = _known_keys(error)
-    mend = nearest(error.keys[-1], known)
+    mend = _cut_at_a_comma(error) or nearest(error.keys[-1], known)
     return error.fault("unknown key", allowed=listed(known), mend=mend)
+
+
+def _cut_at_a_comma(error: _Error) -> str:
+    """Tell a word between braces that has no colon: it belongs to the value before the comma."""
+    if error.document.origin(error.keys) not in error.document.bare:
+        return ""
+    here: Any = error.document.data
+    for key in error.keys[:-1]:
+        here = here[key]
+    keys = list(here)
+    place = keys.index(error.keys[-1])
+    before = keys[place - 1] if place else None
+    said = here.get(before)
+    if isinstance(said, int | float) and isinstance(error.keys[-1], int):
+        return f"a decimal comma? write the number after {before}: with a point"
+    if isinstance(said, str):
+        return f'a text with a comma needs quotes: {before}: "{said}, {error.keys[-1]}"'
+    return "a text with a comma needs quotes; a key needs a colon and a value"
 
 
 def _wanted(error: _Error) -> Fault:
@@ -281,6 +299,7 @@ def _otherwise(error: _Error) -> Fault:
 _WORDS: dict[str, Callable[[_Error], Fault]] = {
     "missing": _missing,
     "extra_forbidden": _unknown,
+    "invalid_key": _unknown,
     "literal_error": _choice,
     "union_tag_invalid": _kind,
     "union_tag_not_found": _no_kind,

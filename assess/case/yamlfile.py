@@ -20,6 +20,7 @@ Keys = tuple[Hashable, ...]  # where something stands: ("members", 0, "name")
 _MOST_NODES = 200_000  # aliases of aliases can unfold a small file into a huge one
 _DEEPEST = 60
 _MERGE = "tag:yaml.org,2002:merge"
+_CONTAINERS = ("tag:yaml.org,2002:map", "tag:yaml.org,2002:seq")
 # What plain scalars mean, after YAML 1.2: 010 is ten, not eight.
 _PLAIN: dict[str, Callable[[str], Any]] = {
     "tag:yaml.org,2002:str": str,
@@ -38,6 +39,7 @@ class Document:
     data: dict[Any, Any]
     lines: dict[Keys, int] = field(default_factory=dict)
     moved: dict[Keys, Keys] = field(default_factory=dict)  # place in `data` -> place in the file
+    bare: frozenset[Keys] = frozenset()  # keys between braces that have not even a colon
 
     def origin(self, keys: Keys) -> Keys:
         """Give the place in the file of a place in `data`."""
@@ -115,7 +117,8 @@ def closest(word: object, known: Iterable[object]) -> str:
 
 def listed(words: Iterable[object]) -> str:
     """List words for the ``allowed`` of a fault, ``none`` if there are none."""
-    return ", ".join(str(word) for word in words) or "none"
+    said = [str(word) for word in words]
+    return ("; " if any("," in word for word in said) else ", ").join(said) or "none"
 
 
 class _Loader(yaml.SafeLoader):
@@ -181,9 +184,10 @@ def read_yaml(path: Path) -> tuple[Document | None, list[Fault]]:
         return None, tree.faults
     if not isinstance(data, dict):
         given = "a list" if isinstance(data, list) else repr(data)[:40]
+        given = "nothing" if data is None else given
         mend = "begin with keys such as structure:, zones:, members:"
         return None, [Fault(file, 1, "a case file is a mapping of keys", given=given, mend=mend)]
-    return Document(file, data, tree.lines), []
+    return Document(file, data, tree.lines, bare=frozenset(tree.bare)), []
 
 
 def _read_text(path: Path) -> tuple[str | None, Fault | None]:
@@ -198,8 +202,9 @@ def _read_text(path: Path) -> tuple[str | None, Fault | None]:
     except (OSError, ValueError) as error:
         return None, Fault(file, 0, f"the file cannot be opened: {error}")
     if not raw.strip(b"\xef\xbb\xbf \t\r\n"):
-        return None, Fault(file, 0, "the file is empty", given=f"{len(raw)} bytes")
-    save = "save it as UTF-8"
+        mend = "`assess new NAME` writes a case to begin with"
+        return None, Fault(file, 0, "the file is empty", given=f"{len(raw)} bytes", mend=mend)
+    save, write = "save it as UTF-8", "write the case in a text editor"
     if raw.startswith((b"\xff\xfe", b"\xfe\xff")):
         return None, Fault(file, 0, "the file is UTF-16 text", allowed="UTF-8", mend=save)
     try:
@@ -207,12 +212,12 @@ def _read_text(path: Path) -> tuple[str | None, Fault | None]:
     except UnicodeDecodeError as error:
         line = raw.count(b"\n", 0, error.start) + 1
         if any(byte < 32 and byte not in b"\t\r\n" for byte in raw):
-            return None, Fault(file, 0, "the file is not text", allowed="UTF-8 text")
+            return None, Fault(file, 0, "the file is not text", allowed="UTF-8 text", mend=write)
         what = "the file is not UTF-8 (it looks like Latin-1)"
         given = repr(raw[error.start : error.start + 1].decode("latin-1"))
         return None, Fault(file, line, what, given=given, allowed="UTF-8", mend=save)
     if "\0" in text:
-        return None, Fault(file, 0, "the file is not text", allowed="UTF-8 text")
+        return None, Fault(file, 0, "the file is not text", allowed="UTF-8 text", mend=write)
     return text, None
 
 
@@ -238,12 +243,18 @@ def _compose(text: str) -> yaml.Node:
     return root
 
 
+def _odd_tag(node: yaml.Node) -> _Trouble:
+    what = "a YAML tag that has no meaning here"
+    return _Trouble(_line(node), what, node.tag, "leave the tag out")
+
+
 class _Tree:
     """Values of a node graph, and the lines they came from."""
 
     def __init__(self, file: str) -> None:
         self.file = file
         self.lines: dict[Keys, int] = {}
+        self.bare: set[Keys] = set()
         self.faults: list[Fault] = []
         self._count = 0
 
@@ -251,6 +262,8 @@ class _Tree:
         self._count += 1
         if depth > _DEEPEST or self._count > _MOST_NODES:
             raise _Trouble(_line(node), "keys or aliases are nested too deep to be read")
+        if not isinstance(node, yaml.ScalarNode) and node.tag not in _CONTAINERS:
+            raise _odd_tag(node)
         if isinstance(node, yaml.MappingNode):
             return self._mapping(node, keys, depth)
         if isinstance(node, yaml.SequenceNode):
@@ -263,9 +276,7 @@ class _Tree:
 
     def _scalar(self, node: yaml.Node) -> Any:
         if node.tag not in _PLAIN:
-            raise _Trouble(
-                _line(node), "a YAML tag that has no meaning here", node.tag, "leave the tag out"
-            )
+            raise _odd_tag(node)
         try:
             return _PLAIN[node.tag](str(node.value))
         except ValueError:
@@ -276,6 +287,8 @@ class _Tree:
         values: dict[Any, Any] = {}
         for key, item in self._merged(node, keys, depth) + self._own(node):
             self.lines[(*keys, key)] = _line(item[0])
+            if item[0].end_mark.index == item[1].start_mark.index:  # no room for a colon
+                self.bare.add((*keys, key))
             values[key] = self.value(item[1], (*keys, key), depth + 1)
         return values
 

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from assess.reliability.section import IndexCurve as IndexCurve
+from assess.updating.power_scaling import PowerScaling as PowerScaling
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -178,6 +179,7 @@ class RunRecord:
     failure_cost: float | None
     provenance: Provenance
     accepted_unconverged: bool = False
+    power_scaling: Sequence[PowerScaling] = ()  # after the last survey
 
     def result(self, section: str, stage: str, option: str = "leave") -> SectionResult:
         """Find one section's result.

@@ -65,15 +65,15 @@ def member_of(case: Case, section: str) -> str:
     )
 
 
-def actions(case: Case, section: str) -> dict[str, Action]:
-    """Give what each stated option does to a section; `leave` is not among them."""
+def actions(case: Case, section: str) -> dict[str, Action | None]:
+    """Give what each stated option does to a section, None for nothing; without `leave`."""
     years, age = calendar_years(case), ages(case)
     member = member_of(case, section)
-    found = {}
+    found: dict[str, Action | None] = {}
     for option in case.spec.decision.options:
         applies = not option.members or member in option.members
         kind = OPTIONS[option.kind]
-        found[option.name] = kind.action(option, case.spec, years, age) if applies else Action()
+        found[option.name] = kind.action(option, case.spec, years, age) if applies else None
     return found
 
 
@@ -127,14 +127,25 @@ def _section(
     state = section_state(case, spec, entry, draws.number, values)
     left = _reliability(case, state, Action(), question)
     results = [_result(case, state, draws.name, LEAVE, left, question)]
+    dropped = _reliability(case, without_dependence(state, question.seed), Action(), question)
+    results[0] = replace(
+        results[0],
+        independent=dropped.reference,
+        verdict_independent=_judge(dropped, question, results[0].verdict.governing),
+    )
     if final:
-        dropped = _reliability(case, without_dependence(state, question.seed), Action(), question)
-        results[0] = replace(
-            results[0],
-            independent=dropped.reference,
-            verdict_independent=_judge(dropped, question, results[0].verdict.governing),
-        )
         for name, action in actions(case, entry.name).items():
+            if action is None:  # the option leaves this member as it is
+                results.append(
+                    replace(
+                        results[0],
+                        option=name,
+                        independent=None,
+                        verdict_independent=None,
+                        evaluations=0,
+                    )
+                )
+                continue
             # On the same points: what differs between options is then not noise.
             found = _reliability(case, state, action, question, left.proposal)
             results.append(_result(case, state, draws.name, name, found, question))

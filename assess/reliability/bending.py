@@ -1,6 +1,6 @@
 """Limit state: bending of a reinforced-concrete section with corroding bars."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Annotated, Literal
 
 import numpy as np
@@ -8,9 +8,9 @@ from numpy.typing import NDArray
 from pydantic import Field
 from scipy import special
 
-from assess.case.forms import Closed, LimitStateForm, SectionEntry
+from assess.case.forms import Closed, Complaint, LimitStateForm, SectionEntry
 from assess.case.quantities import CoefficientOfVariation, InUnit, Length, PositiveNumber
-from assess.case.spec import CaseSpec
+from assess.case.spec import CaseSpec, NominalCover, Whole
 from assess.mechanics.bending import bending_resistance
 from assess.mechanics.corrosion import (
     penetration_depth,
@@ -21,6 +21,7 @@ from assess.mechanics.corrosion import (
 )
 from assess.mechanics.dimensions import dimension_deviation, effective_depth
 from assess.mechanics.model_uncertainty import model_uncertainty
+from assess.reliability.bending_faults import Shape, impossible_load, impossible_shape
 from assess.reliability.limit_state import AnnualMaximum, LimitState, Surroundings
 from assess.reliability.loads import Loads, permanent_effect
 
@@ -49,9 +50,14 @@ class Flange(Closed):
 class Bars(Closed):
     """Tension bars, in one layer."""
 
-    count: Annotated[int, Field(ge=1, le=200, description="number of bars")]
+    count: Annotated[Whole, Field(ge=1, le=200, description="number of bars")]
     diameter: Length = Field(description="diameter of the sound bars")
     steel: str = Field(description="name under `steel`")
+    spread: Length | None = Field(
+        None,
+        description="width over which the bars lie, where it is not that of the web, as above a "
+        "support in a slab; only checked against their number",
+    )
     pit_length: Length = Field(
         1000.0,
         description="length of bar over which the deepest pit governs. "
@@ -119,6 +125,22 @@ class Bending(LimitState):
     """
 
     form = LimitStateForm(key="bending", title="Bending resistance", entry=BendingSection)
+
+    def faults(self, entry: BendingSection, spec: CaseSpec) -> Sequence[Complaint]:
+        """Find impossible geometry, and variable loads that vanish or do not exist."""
+        cover = spec.zones[entry.zone].cover
+        nominal = cover.nominal if isinstance(cover, NominalCover) else cover.mean.marginal().mean
+        flange = None if entry.flange is None else (entry.flange.width, entry.flange.thickness)
+        shape = Shape(
+            entry.depth,
+            entry.width,
+            flange,
+            entry.link_diameter,
+            entry.bars.count,
+            entry.bars.diameter,
+            entry.bars.spread or entry.width,
+        )
+        return [*impossible_shape(shape, nominal), *impossible_load(entry.loads, spec.structure)]
 
     def chances(self, entry: BendingSection) -> Mapping[str, str]:
         """Name the section's own standard normals with their groups."""

@@ -29,7 +29,8 @@ STEP = 1e-3  # of the finite differences, in standard normal units
 AXIS_SCOUT = 2.5  # distance of the scouts on the axes, in standard normal units
 CLOUD_SCOUT = 1.5  # scatter of the other scouts
 CLOUD = 16  # number of those
-ITERATIONS = 5
+ITERATIONS = 8
+WORTHWHILE = 0.02  # gain in the logarithm of the integrand for which a climb goes on
 SHARES = np.array([0.0, 0.05, 0.2, 0.5, 1.0])  # of the way to the linear form's maximum
 BISECTIONS = 30
 ELEMENTS = 400_000  # capacity evaluations held in memory at a time
@@ -128,7 +129,7 @@ def find_modes(
     year : int
         Index of the year.
     starts : sequence of ndarray, each (n_draw, dimension)
-        Where to start from besides the origin and the best of the scouts.
+        Where to start from besides the best of the scouts; the origin if left out.
 
     Returns
     -------
@@ -169,7 +170,7 @@ def find_modes(
     mode = np.zeros((problem.draws, problem.dimension))
     peak = np.full(problem.draws, -np.inf)
     around = problem.dimension + 1
-    for start in (np.zeros_like(best), best, *starts):
+    for start in (best, *(starts or [np.zeros_like(best)])):
         for part in np.array_split(draws, max(1, problem.draws * around // ELEMENTS)):
             found, height = _climb(log_hazard, start[part], part)
             higher = height > peak[part]
@@ -194,18 +195,24 @@ def _climb(
     log_hazard: Callable[[FloatArray, IntArray], FloatArray], start: FloatArray, part: IntArray
 ) -> tuple[FloatArray, FloatArray]:
     """Climb from the starts of some draws to where the integrand is largest."""
-    dimension = start.shape[1]
+    count, dimension = start.shape
     offsets = np.concatenate([np.zeros((1, dimension)), STEP * np.eye(dimension)])
-    mode = start
+    mode, peak = start.copy(), np.full(count, -np.inf)
+    climbing = np.arange(count)
     for _ in range(ITERATIONS):
-        around = log_hazard(mode[:, None, :] + offsets, part)
+        here, chosen = mode[climbing], part[climbing]
+        around = log_hazard(here[:, None, :] + offsets, chosen)
         slope = (around[:, 1:] - around[:, :1]) / STEP
-        target = _linear_maximum(around[:, 0], slope, mode)
-        tried = mode[:, None, :] + SHARES[:, None] * (target - mode)[:, None, :]
-        height = _height(log_hazard(tried, part), tried)
+        target = _linear_maximum(around[:, 0], slope, here)
+        tried = here[:, None, :] + SHARES[:, None] * (target - here)[:, None, :]
+        height = _height(log_hazard(tried, chosen), tried)
         best = height.argmax(axis=1)
-        row = np.arange(len(part))
-        mode, peak = tried[row, best], height[row, best]
+        row = np.arange(len(climbing))
+        gained = height[row, best] - peak[climbing]
+        mode[climbing], peak[climbing] = tried[row, best], height[row, best]
+        climbing = climbing[gained > WORTHWHILE]
+        if not len(climbing):
+            break
     return mode, peak
 
 

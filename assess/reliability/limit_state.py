@@ -5,14 +5,14 @@ A limit state is one subclass of `LimitState` in a file of its own and one line 
 """
 
 from abc import ABC, abstractmethod
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any, ClassVar
 
 import numpy as np
 from numpy.typing import NDArray
 
-from assess.case.forms import LimitStateForm
+from assess.case.forms import Complaint, LimitStateForm
 from assess.case.spec import CaseSpec
 
 FloatArray = NDArray[np.float64]
@@ -82,6 +82,10 @@ class LimitState(ABC):
     """One limit state at a section."""
 
     form: ClassVar[LimitStateForm]
+
+    def faults(self, entry: Any, spec: CaseSpec) -> Sequence[Complaint]:
+        """Find what no section can be like, though each of its quantities is allowed."""
+        return ()
 
     @abstractmethod
     def chances(self, entry: Any) -> Mapping[str, str]:

@@ -171,23 +171,29 @@ def ignoring_sentence(record: RunRecord) -> str:
     changed = [item.section for item in results if verdict_changes(item)]
     differences = [_difference(item) for item in results]
     largest = max(differences, key=abs)
+    if not largest:
+        return ""
     way = "higher" if largest > 0 else "lower"
     size = f"by up to {numbers.index(abs(largest))} ({way})"
     if changed:
         return (
             f"Ignoring the dependence between the variables would change the verdict at "
-            f"{numbers.listing(changed)}, and the present index {size}."
+            f"{numbers.listing(changed)}, and an index {size}."
         )
     return (
         "Ignoring the dependence between the variables would change no verdict; it would change "
-        f"the present index {size}."
+        f"an index {size}."
     )
 
 
 def _difference(result: SectionResult) -> float:
+    """Largest change of a section's index in any year, where both are finite."""
     if result.independent is None:
         return 0.0
-    return float(result.independent.index[0] - result.reference.index[0])
+    kept, dropped = result.reference.index, result.independent.index
+    usable = np.isfinite(kept) & np.isfinite(dropped)
+    change = dropped[usable] - kept[usable]
+    return float(max(change, key=abs, default=0.0))
 
 
 def verdict_changes(result: SectionResult) -> bool:

@@ -7,6 +7,7 @@ from scipy.special import ndtr
 
 from assess.decisions.results import (
     FloatArray,
+    PowerScaling,
     RunRecord,
     SectionResult,
     StageRecord,
@@ -16,6 +17,7 @@ from assess.decisions.results import (
     Verdict,
 )
 from assess.report import derived, numbers
+from assess.updating.power_scaling import SENSITIVE
 
 WITHHELD = "withheld"
 FINE, DOUBTFUL, CONFLICT = "unremarkable", "doubtful", "conflict"
@@ -185,6 +187,15 @@ def stage_diagnosis(record: RunRecord, stage: StageRecord) -> str:
 
 def _divergences(number: int) -> str:
     return "no divergent step" if number == 0 else numbers.count(number, "divergent step")
+
+
+def power_scaling_words(found: PowerScaling) -> str:
+    """Say what decides a variable: its prior, the data, or both against each other."""
+    if found.conflict:
+        return "prior and data both felt; may disagree"
+    if found.rests_on_prior:
+        return "rests on its prior; mind its source"
+    return "settled by data" if found.data >= SENSITIVE else "hardly moved by either"
 
 
 def p_value_words(p_value: float) -> str:

@@ -1,6 +1,6 @@
 """Evidence: compressive strength of drilled cores."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import Any, Literal, cast
 
@@ -11,8 +11,10 @@ from pydantic import Field
 from assess import operations as op
 from assess.case.forms import Column, EvidenceEntry, EvidenceForm
 from assess.case.reader import Case
-from assess.mechanics.core_corrections import correction
+from assess.errors import Fault
+from assess.mechanics.core_corrections import DIAMETER_RANGE, correction
 from assess.probability.marginals import make_marginal
+from assess.updating.core_faults import uncorrectable_cores
 from assess.updating.kind import (
     EvidenceKind,
     FloatArray,
@@ -78,7 +80,7 @@ class Cores(EvidenceKind):
                 below=300.0,
                 usual=(8.0, 110.0),
             ),
-            Column("diameter", "core diameter", "mm", above=0.0, usual=(40.0, 200.0)),
+            Column("diameter", "core diameter", "mm", above=0.0, usual=DIAMETER_RANGE),
             Column("length", "length when tested, capped", "mm", above=0.0, usual=(40.0, 400.0)),
             Column(
                 "moisture",
@@ -96,6 +98,15 @@ class Cores(EvidenceKind):
         "factors of ACI 214.4R-10 are common to all cores."
     )
     carrier = "concrete_mean"
+
+    def faults(self, case: Case) -> Sequence[Fault]:
+        """Find cores whose shape the correction does not cover."""
+        return [
+            fault
+            for _, item in gather(case, self.form.key)
+            if cast(CoresEntry, item.entry).correction != "none"
+            for fault in uncorrectable_cores(self.form, item.table)
+        ]
 
     def rows(self, case: Case) -> Rows | None:
         """Gather the cores of all surveys, corrected."""

@@ -1,6 +1,6 @@
 """Evidence: concrete cover read with a meter."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Annotated, Any, cast
 
@@ -13,6 +13,7 @@ from assess import operations as op
 from assess.case.forms import Closed, Column, EvidenceEntry, EvidenceForm
 from assess.case.quantities import InUnit, Length
 from assess.case.reader import Case
+from assess.errors import Fault
 from assess.probability.marginals import make_marginal
 from assess.updating.kind import (
     EvidenceKind,
@@ -100,6 +101,23 @@ class Cover(EvidenceKind):
         "its readings and a stated scatter; readings beyond its range count as at least that much."
     )
     carrier = "cover_mean"
+
+    def faults(self, case: Case) -> Sequence[Fault]:
+        """Find meters that are said to have another bias than before: it is one and the same."""
+        first: dict[str, tuple[float, int]] = {}
+        found = []
+        for _, item in gather(case, self.form.key):
+            meter = cast(CoverEntry, item.entry).meter
+            keys = (*item.keys, "meter", "bias")
+            bias, line = first.setdefault(meter.name, (meter.bias, case.document.line(keys)))
+            if bias != meter.bias:
+                what = f"meter {meter.name!r} has another bias in line {line}"
+                given, allowed = f"{meter.bias:g} mm", f"{bias:g} mm"
+                mend = "a name stands for one unknown bias: say the same, or use another name"
+                found.append(
+                    case.document.fault(keys, what, given=given, allowed=allowed, mend=mend)
+                )
+        return found
 
     def rows(self, case: Case) -> Rows | None:
         """Gather the readings of all surveys."""

@@ -17,17 +17,18 @@ from assess.case.spec import (
 )
 from assess.mechanics.concrete import IN_SITU_EXPONENT, PRIOR_SOURCE, strength_prior
 from assess.probability.dependence import PairDependence, score_correlation_matrix
+from assess.probability.log_uniform import LogUniform
 from assess.probability.marginals import make_marginal
 from assess.updating.kinds import KINDS
 from assess.updating.variables import AnyVariable, JointPrior, LevelGivenScatter, Variable
 
 FloatArray = NDArray[np.float64]
 
-# Of a prior that leaves the cores to speak: ln(median) about 30 MPa and ln(scatter) about 0.15
-# with standard deviations so large that a few cores swamp them; the densities approach the
-# 1/sigma that EN 1990 annex D stands on.
-VAGUE_LEVEL_SD = 5.0
-VAGUE_SCATTER_SD = 5.0
+# Of a prior that leaves the cores to speak: ln(median) about 30 MPa with a standard deviation so
+# large, and a scatter log-uniform over bounds so wide, that a few cores swamp them; the density
+# approaches the 1/sigma that EN 1990 annex D stands on.
+VAGUE_LEVEL = (30.0, 10.0)
+VAGUE_SCATTER = (1e-3, 50.0)
 COVER_MEAN_SD = 5.0  # [mm] JCSS part 3.10: mean deviation of beams, slabs within some 10 mm
 COVER_SCATTER = (7.5, 0.25)  # [mm], V. JCSS part 3.10: standard deviation 5 to 10 mm
 COVER_SOURCE = "JCSS Probabilistic Model Code, part 3.10, cover; ranges put as distributions"
@@ -103,11 +104,9 @@ def _concrete_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
             ]
     else:
         source = concrete.source or "vague, by choice"
-        vague_scatter = make_marginal(
-            "lognormal", parameters={"log_mean": np.log(0.15), "log_sd": VAGUE_SCATTER_SD}
-        )
+        vague_scatter = LogUniform(*VAGUE_SCATTER)
         vague_level = make_marginal(
-            "lognormal", parameters={"log_mean": np.log(30.0), "log_sd": VAGUE_LEVEL_SD}
+            "lognormal", parameters={"log_mean": np.log(VAGUE_LEVEL[0]), "log_sd": VAGUE_LEVEL[1]}
         )
         return [
             Variable(*scatter, zone_name, source, vague_scatter),

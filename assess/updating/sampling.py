@@ -122,6 +122,9 @@ class NutpieSampler:
             progress_bar=False,
             progress_callback=report,
         )
+        if trace["posterior"].sizes["draw"] < settings.draws:
+            # nutpie takes an interrupt for itself and gives what it has so far.
+            raise KeyboardInterrupt
         return _chains(trace, "logp")
 
 
@@ -202,6 +205,10 @@ def diagnose(
 
     chosen = [i for i, name in enumerate(names) if name in set(used)]
     chosen = [i for i in chosen if np.ptp(physical[..., i]) > 0.0]  # constants always converge
+    divergent = [f"{divergences} divergent transitions"] if divergences else []
+    if not chosen:
+        size = float(physical.shape[0] * physical.shape[1])
+        return Diagnostics(1.0, size, size, divergences, "", tuple(divergent))
     draws = physical[..., chosen]
     axes = {"chain_axis": 0, "draw_axis": 1}
     with np.errstate(divide="ignore", invalid="ignore"):  # chains that never moved
@@ -219,8 +226,7 @@ def diagnose(
             faults.append(f"tail ESS {tail[k]:.0f} below {ESS_LIMIT:.0f}")
         if faults:
             failures.append(f"{names[i]}: {', '.join(faults)}")
-    if divergences:
-        failures.append(f"{divergences} divergent transitions")
+    failures += divergent
     return Diagnostics(
         float(rhat.max()),
         float(bulk.min()),

@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 from pydantic import Field
 
-from assess.case.forms import Column, EvidenceEntry, EvidenceForm
+from assess.case.forms import Column, EvidenceEntry, EvidenceForm, Judged, Table
 from assess.case.quantities import CoefficientOfVariation, Length
 from assess.case.reader import Case
 from assess.errors import Fault
@@ -25,6 +25,15 @@ from assess.updating.kind import (
 )
 from assess.updating.local import LocalModel
 from assess.updating.local_corrosion import measured_corrosion
+from assess.updating.loss_faults import healed_place
+
+
+def _loss_of_diameter(entry: EvidenceEntry, table: Table) -> FloatArray:
+    """Loss of diameter that counts as found, NaN elsewhere [mm]."""
+    loss = table.numbers["original diameter"] - table.numbers["residual diameter"]
+    found = loss >= 2.0 * cast(SectionLossEntry, entry).detection_limit
+    return np.where(found, loss, np.nan)
+
 
 NONE_FOUND = ("none", "no loss", "none found", "no loss found")
 
@@ -78,6 +87,8 @@ class SectionLoss(EvidenceKind):
             ),
         ),
         value="residual diameter",
+        log_scale=True,
+        judged=Judged("loss of diameter", _loss_of_diameter),
     )
     unit = "mm"
     log_scale = True
@@ -130,7 +141,7 @@ class SectionLoss(EvidenceKind):
             found += [
                 Fault(
                     str(item.table.path),
-                    int(item.table.lines[0]),
+                    int(item.table.lines[np.flatnonzero(item.zone == zone)[0]]),
                     "loss was looked for in a zone without corrosion",
                     zone,
                     "zones with `corrosion`",
@@ -141,16 +152,7 @@ class SectionLoss(EvidenceKind):
         rows = None if found else self.rows(case)
         if rows is not None:
             for place in history.healed_places(rows):
-                found.append(
-                    Fault(
-                        str(case.path),
-                        0,
-                        "loss was found at a place and none at a later survey",
-                        place,
-                        "loss that does not shrink",
-                        "give the two break-outs different locations, or mend the table",
-                    )
-                )
+                found.append(healed_place(rows, place, gather(case, self.form.key)))
         return found
 
     def data(self, rows: Rows, stage: int) -> dict[str, NDArray[Any]]:

@@ -86,6 +86,27 @@ def test_xlsx_first_sheet(tmp_path: Path) -> None:
     assert (table.header_line, table.lines) == (2, [3, 5])
 
 
+def test_merged_cells_are_refused_from_the_header_on(tmp_path: Path) -> None:
+    book = openpyxl.Workbook()
+    sheet = book.worksheets[0]
+    for row in (["# a title"], ["zone", "cover [mm]"], ["deck", 40], [None, 41]):
+        sheet.append(row)
+    sheet.merge_cells("A1:B1")  # above the header it does no harm
+    sheet.merge_cells("A3:A4")
+    book.save(tmp_path / "t.xlsx")
+    _, faults = read_rows(tmp_path / "t.xlsx")
+    (fault,) = [str(one).removeprefix(f"{tmp_path}/") for one in faults]
+    assert fault == "t.xlsx:3: cells A3:A4 are merged, fill each cell instead"
+
+
+def test_a_row_of_formulas_alone_is_not_lost(tmp_path: Path) -> None:
+    path = write_book(tmp_path / "t.xlsx", [["a", "b"], [1, 2], ["=A2", "=B2"]])
+    table, _ = read_rows(path)
+    assert table is not None
+    assert table.rows == [["1", "2"], ["=A2", "=B2"]]
+    assert table.sheets == ("Sheet", "other")
+
+
 def test_workbook_is_known_by_its_content(tmp_path: Path) -> None:
     path = write_book(tmp_path / "t.xlsx", [["a"], [1]])
     assert rows_of(tmp_path, path.read_bytes(), "renamed.csv").rows == [["1"]]

@@ -174,6 +174,48 @@ FAULTS = [
     (("name: Weir bridge", "name: 12"), "structure.name: must be text, given 12, put it in quotes"),
     (("assessed: 2026", "assessed: 2026.5"), "must be a whole number, given 2026.5"),
     (("assessed: 2026", "assessed: true"), "a number is wanted, given true"),
+    (
+        ("discount_rate: 0.03", "discount_rate: 1e25"),
+        r"a discount rate is out of all proportion, given 1e\+?25, allowed up to 1e\+20",
+    ),
+    # what the logarithm is taken of
+    (
+        ("onset: {distribution: lognormal", "onset: {distribution: normal"),
+        "case.yaml:9: .*onset: must be a distribution of positive values only, given normal from "
+        "-inf to inf, allowed such as lognormal or gamma, or cut it off with lower: 0",
+    ),
+    (
+        (
+            "scatter: {distribution: lognormal, mean: 8 mm, V: 0.3",
+            "scatter: {distribution: normal, mean: 8 mm, V: 0.3",
+        ),
+        "case.yaml:7: .*cover.scatter: must be a distribution of positive values only",
+    ),
+    # commas between braces
+    (
+        ("V: 0.3, source: practice}", "V: 0.3, source: practice, sheet 3}"),
+        "case.yaml:7: .*cover.scatter.sheet 3: unknown key, .* a text with a comma needs quotes: "
+        'source: "practice, sheet 3"',
+    ),
+    (
+        (
+            "quantiles: {0.05: 20 yr, 0.95: 60 yr}, source: model}",
+            "quantiles: {0.05: 20 yr, 0.95: 60 yr}, drawings, source: model}",
+        ),
+        "case.yaml:9: .*onset.drawings: unknown key, .* a text with a comma needs quotes; a key",
+    ),
+    (
+        (
+            "current_scatter: {distribution: lognormal, mean: 0.6,",
+            "current_scatter: {distribution: lognormal, mean: 1,5,",
+        ),
+        "case.yaml:12: .*current_scatter.5: unknown key, .* a decimal comma. write the number "
+        "after mean: with a point",
+    ),
+    (
+        ("invented: true}", "invnted: }"),
+        "case.yaml:1: structure.invnted: unknown key, .* did you mean 'invented'",
+    ),
     (("invented: true", "invented: perhaps"), "must be true or false, given perhaps"),
     (("sampling: {seed: 7}", "sampling: 7"), "sampling: must be a mapping of keys, given 7"),
     (("sampling: {seed: 7}", "sampling:"), "sampling: has no value, allowed a mapping of keys"),
@@ -220,7 +262,18 @@ FAULTS = [
     (("2019-06-12", "12.06.2019"), "not a date, given 12.06.2019, allowed .* 2019-06-12"),
     (("2019-06-12", "2019-02-30"), "there is no such date, given 2019-02-30"),
     (("built: 1971", "built: 71"), "not a year of construction, given 71, allowed 1800 to 2100"),
-    (("from: 2028", "from: 2020"), "case.yaml:45: .* given 2020, allowed 2026 to 2056"),
+    (("from: 2028", "from: 2025"), "case.yaml:45: .* given 2025, allowed 2026 to 2055"),
+    (
+        ("from: 2028", "from: 2056"),
+        "case.yaml:45: .* given 2056, allowed 2026 to 2055, the horizon counts the year of the",
+    ),
+    # what follows from a wrong horizon or year is not complained of
+    (("horizon: 30", "horizon: -5"), "case.yaml:1: structure.horizon: .* given -5, allowed at lea"),
+    (
+        ("assessed: 2026", "assessed: 1960"),
+        "case.yaml:1: structure.assessed: the assessment lies before the construction, given 1960, "
+        "allowed 1971 or later",
+    ),
     # dependence
     (("soffit.onset,", "sofit.onset,"), "case.yaml:41: .* given sofit.onset, .* 'soffit.onset'"),
     (("soffit.onset,", "deck.onset,"), "zone 'deck' has no corrosion, hence no such variable"),
@@ -372,6 +425,37 @@ def test_missing_case_file(tmp_path: Path, vocabulary: Vocabulary) -> None:
     assert "none.yaml: there is no such file" in str(reading.faults[0])
 
 
+def test_a_path_that_no_file_system_takes_is_a_missing_table(fault_of: FaultOf) -> None:
+    fault = fault_of(("table: cores.csv", f"table: {'x' * 5000}"))
+    assert fault.startswith("case.yaml:22: surveys.first visit.cores.table: there is no such table")
+    assert len(fault) < 300
+    assert "\\x00" in fault_of(("table: cores.csv", r'table: "a\0b"'))
+
+
+def test_what_can_be_checked_further_is_kept_beside_faulty_tables(read: Read) -> None:
+    reading = read(tables={"cores.csv": "strength [MPa]\nforty\n"})
+    assert reading.case is None
+    assert reading.readable is not None
+    assert [one.kind for one in reading.readable.evidence] == ["section_loss", "cover"]
+    assert read(("zones: [soffit]", "zones: [sofit]")).readable is None
+
+
+def test_an_option_may_start_in_the_last_year_looked_at(read: Read) -> None:
+    assert read(("from: 2028", "from: 2055")).faults == ()
+
+
+def test_evidence_knows_its_place_in_the_case_file(read: Read) -> None:
+    case = read().case
+    assert case is not None
+    # A list of one may stand without the list: cover does not, the others do.
+    assert [one.keys for one in case.evidence] == [
+        ("surveys", 1, "section_loss"),
+        ("surveys", 0, "cores"),
+        ("surveys", 0, "cover", 0),
+    ]
+    assert [case.document.line(one.keys) for one in case.evidence] == [26, 22, 24]
+
+
 # Doubts -------------------------------------------------------------------------------------------
 
 
@@ -380,6 +464,27 @@ def test_survey_in_the_future_is_doubted(read: Read) -> None:
     assert reading.case is not None
     (doubt,) = reading.doubts
     assert "case.yaml:20: surveys.first visit.date: the survey lies in the future" in str(doubt)
+
+
+def test_outliers_are_judged_zone_by_zone(read: Read) -> None:
+    # 62 is far from the soffit's 40 and near the deck's 60; 41 the other way round.
+    soffit, deck = [38, 39, 40, 40.5, 41, 42, 40.2, 39.5, 62], [58, 59, 60, 61, 60.5, 62, 59.5, 41]
+    rows = [f"soffit,{v}" for v in soffit] + [f"deck,{v}" for v in deck]
+    reading = read(tables={"cover.csv": "zone,cover [mm]\n" + "\n".join(rows)})
+    doubts = [str(doubt) for doubt in reading.doubts]
+    assert [":".join(doubt.split(":")[1:2]) for doubt in doubts] == ["10", "18"]
+    assert "around a median of 40.2 mm in 'soffit', given 62 mm" in doubts[0]
+    assert "around a median of 59.75 mm in 'deck', given 41 mm" in doubts[1]
+
+
+def test_a_coefficient_of_variation_above_one_is_doubted(read: Read) -> None:
+    reading = read(("V: 0.15", "V: 1.5"))
+    assert reading.case is not None
+    (doubt,) = reading.doubts
+    assert str(doubt).endswith(
+        "case.yaml:15: zones.deck.concrete.V: a coefficient of variation is out of the usual "
+        "range, given 1.5, allowed usually up to 1, in percent? write 0.015"
+    )
 
 
 def test_table_used_twice_is_doubted(read: Read) -> None:

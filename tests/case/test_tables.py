@@ -1,4 +1,6 @@
 import math
+from dataclasses import replace
+from datetime import datetime
 from pathlib import Path
 
 import numpy as np
@@ -7,7 +9,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from assess.case.forms import EvidenceForm, Table, Vocabulary
+from assess.case.forms import Column, EvidenceForm, Table, Vocabulary
 from assess.case.tables import read_table
 
 
@@ -238,32 +240,97 @@ def test_equal_readings_without_a_location_are_no_repetition(
     sound(tmp_path, cover, "cover [mm]\n40\n40\n40\n")
 
 
-# Modified z-score by hand: values 38..46 and 90 have median 42.5 and absolute deviations
-# 4.5 3.5 2.5 1.5 0.5 0.5 1.5 2.5 3.5 47.5, hence MAD 2.5 and 0.6745 * 47.5 / 2.5 = 12.8 for 90.
-def test_outlier_by_the_modified_z_score(tmp_path: Path, cover: EvidenceForm) -> None:
-    values = [38, 39, 40, 41, 42, 43, 44, 45, 46, 90]
-    _, faults, doubts = outcome(tmp_path, cover, "cover [mm]\n" + "\n".join(map(str, values)))
-    assert faults == []
-    (doubt,) = doubts
-    assert "t.csv:11: cover lies far from the others: modified z-score 12.8" in doubt
-    assert "given 90 mm" in doubt
+MOST = Column("strength", "crushing strength", "MPa", above=0.0, below=300.0, usual=(8.0, 120.0))
 
 
-# On the logarithm to base 2 the deviations from the median are 0, 1/8, 1/4, 3/8, 1/2 and 1.6, all
-# but the first twice: MAD 3/8 and 0.6745 * 1.6 / 0.375 = 2.9, no outlier. The plain values' median
-# is the same, their MAD 28.3 * (1 - 2**-0.375) = 6.5, and 85.7 would be one: 0.6745 * 57.5 / 6.5.
-def test_outliers_are_judged_on_the_logarithm_where_the_form_says_so(
-    tmp_path: Path, cores: EvidenceForm
+@pytest.fixture
+def bounded(cores: EvidenceForm) -> EvidenceForm:
+    """Cores whose strength has an upper bound, as a unit mistaken for another one meets it."""
+    return replace(cores, columns=(MOST,))
+
+
+# 1 MPa is 145.04 psi, 0.14504 ksi, 1000 kPa and 10.197 kgf/cm².
+@pytest.mark.parametrize(
+    ("values", "looks"),
+    [
+        ((4350, 5100, 4800), "psi"),
+        ((45000, 38000), "kPa"),
+        ((410, 350), "kgf/cm^2"),
+        ((6.1, 5.2), "ksi"),
+    ],
+)
+def test_a_column_in_another_unit_is_one_fault_even_beyond_what_is_allowed(
+    tmp_path: Path, bounded: EvidenceForm, values: tuple[float, ...], looks: str
 ) -> None:
-    powers = [-1.6, -0.5, -0.375, -0.25, -0.125, 0.0, 0.125, 0.25, 0.375, 0.5, 1.6]
-    values = 28.3 * 2.0 ** np.array(powers)
-    plain = 0.6745 * (values - 28.3) / np.median(np.abs(values - 28.3))
-    assert plain.max() > 3.5
-    sound(tmp_path, cores, "strength [MPa]\n" + "\n".join(map(str, values)))
+    text = "strength [MPa]\n" + "".join(f"{value}\n" for value in values)
+    _, (fault,), doubts = outcome(tmp_path, bounded, text)
+    assert f"t.csv:1: column 'strength' looks like {looks} under a MPa header" in fault
+    assert doubts == []
 
 
-def test_no_outliers_among_few_values(tmp_path: Path, cover: EvidenceForm) -> None:
-    sound(tmp_path, cover, "cover [mm]\n38\n39\n40\n41\n42\n43\n90\n")
+def test_one_cell_beyond_what_is_allowed_is_told_its_likely_unit(
+    tmp_path: Path, bounded: EvidenceForm
+) -> None:
+    _, (fault,), _ = outcome(tmp_path, bounded, "strength [MPa]\n40\n4350\n38\n")
+    assert fault == (
+        "t.csv:3: column 'strength': is out of range, given 4350, allowed more than 0 and less "
+        "than 300 MPa, written in psi?"
+    )
+
+
+def test_percent_under_a_header_without_unit(tmp_path: Path, loss: EvidenceForm) -> None:
+    text = "original diameter [mm],residual diameter [mm],share [-]\n25,22,15\n"
+    _, (fault,), _ = outcome(tmp_path, loss, text)
+    assert fault.endswith("given 15, allowed less than 1.001, written in %?")
+
+
+def test_a_title_in_place_of_the_header_is_one_fault(tmp_path: Path, cores: EvidenceForm) -> None:
+    text = "Cores of the bridge\nlocation,strength [MPa]\nA1,40\n"
+    _, (fault,), _ = outcome(tmp_path, cores, text)
+    assert fault == (
+        "t.csv:1: this line is no header of a table of crushed cores, given 'Cores of the bridge', "
+        "allowed strength [MPa], diameter [mm], length [mm], moisture, is it a title? begin it "
+        "with #, or delete it"
+    )
+
+
+def write_book(path: Path, *sheets: list[list[object]]) -> Path:
+    book = openpyxl.Workbook()
+    book.remove(book.worksheets[0])
+    for number, rows in enumerate(sheets, start=1):
+        sheet = book.create_sheet(f"sheet {number}")
+        for row in rows:
+            sheet.append(row)
+    book.save(path)
+    return path
+
+
+def test_a_table_that_is_not_the_first_sheet(tmp_path: Path, cores: EvidenceForm) -> None:
+    path = write_book(tmp_path / "t.xlsx", [["read me"]], [["strength [MPa]"], [40]])
+    _, (fault,), _ = read_table(path, cores)
+    assert "t.xlsx:1: this line is no header" in str(fault)
+    assert str(fault).endswith("only the first sheet is read (sheet 1): the table in sheet 2?")
+
+
+@pytest.mark.parametrize(
+    ("cell", "message"),
+    [
+        (
+            "=20*2",
+            "t.xlsx:2: .* a formula that was never computed, given '=20\\*2'.* open and save",
+        ),
+        (datetime(2025, 3, 4), "t.xlsx:2: .* a date where a number is wanted, given '2025-03-04"),
+        (True, "t.xlsx:2: .* text where a number is wanted, given 'True'"),
+        ("#DIV/0!", "t.xlsx:2: .* text where a number is wanted, given '#DIV/0!'"),
+    ],
+)
+def test_cells_of_workbooks_that_are_no_numbers(
+    tmp_path: Path, cores: EvidenceForm, cell: object, message: str
+) -> None:
+    path = write_book(tmp_path / "t.xlsx", [["strength [MPa]"], [cell]])
+    _, (fault,), _ = read_table(path, cores)
+    with pytest.raises(ValueError, match=message):
+        raise ValueError(str(fault))
 
 
 @given(st.binary(max_size=300) | st.text(max_size=300).map(lambda text: text.encode("utf-8")))

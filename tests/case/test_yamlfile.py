@@ -4,7 +4,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from assess.case.yamlfile import Document, closest, nearest, read_yaml
+from assess.case.yamlfile import Document, closest, listed, nearest, read_yaml
 
 
 def parse(folder: Path, content: str | bytes) -> Document:
@@ -158,3 +158,37 @@ def test_any_bytes_are_read_or_refused(tmp_path: Path, content: bytes) -> None:
 def test_any_yaml_like_text_is_read_or_refused(tmp_path: Path, content: str) -> None:
     document, faults = read_yaml(write(tmp_path, content))
     assert (document is None) == bool(faults)
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "a: !!python/object/apply:os.system [ls]",
+        "a: !!python/object:os.x {b: 1}",
+        "a: !!python/name:os.system",
+        "a: !!set {b, c}",
+        "a: !mine {b: 1}",
+    ],
+)
+def test_refuse_tags_of_any_sort_of_node(tmp_path: Path, text: str) -> None:
+    path = tmp_path / "case.yaml"
+    path.write_text(f"x: 1\n{text}\n", encoding="utf-8")
+    document, (fault,) = read_yaml(path)
+    assert document is None
+    assert fault.line == 2
+    assert "a YAML tag that has no meaning here" in fault.what
+
+
+def test_keys_without_a_colon_are_remembered(tmp_path: Path) -> None:
+    path = tmp_path / "case.yaml"
+    text = "a: {source: drawings, sheet 3}\nb: {c: , d: 1}\ne:\n"
+    path.write_text(text, encoding="utf-8")
+    document, _ = read_yaml(path)
+    assert document is not None
+    assert document.bare == {("a", "sheet 3")}
+
+
+def test_words_with_commas_are_listed_apart() -> None:
+    assert listed(["a", "b"]) == "a, b"
+    assert listed(["a, b", "c"]) == "a, b; c"
+    assert listed([]) == "none"

@@ -11,6 +11,7 @@ from assess.decisions.results import (
     DataRecord,
     IndexCurve,
     OptionResult,
+    PowerScaling,
     Provenance,
     RunRecord,
     SectionResult,
@@ -286,6 +287,12 @@ def make_record(seed: int = 20260901) -> RunRecord:
             versions={"assess": "0.1.0", "python": "3.13.1", "numpy": "2.5.0"},
             timings={"sampling": 41.2, "reliability": 6.4, "report": 3.9},
             sampler="No-U-Turn sampler, 4 chains, 1000 warm-up and 1000 kept draws",
+        ),
+        power_scaling=(
+            PowerScaling("onset", 0.21, 0.13),
+            PowerScaling("rate", 0.14, 0.03),
+            PowerScaling("cover_mean", 0.01, 0.09),
+            PowerScaling("pit", 0.02, 0.01),
         ),
     )
 

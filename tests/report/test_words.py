@@ -42,3 +42,13 @@ def test_a_survey_named_after_something_is_not_said_after_twice(record: RunRecor
     renamed = replace(record, stages=[*record.stages[:-1], named])
     assert words.stage_words(renamed, "after 2025") == "after 2025"
     assert words.stage_words(renamed, "spring visit") == "after spring visit"
+
+
+def test_power_scaling_says_what_decides_a_variable(record: RunRecord) -> None:
+    said = {item.variable: words.power_scaling_words(item) for item in record.power_scaling}
+    assert said == {
+        "onset": "prior and data both felt; may disagree",
+        "rate": "rests on its prior; mind its source",
+        "cover_mean": "settled by data",
+        "pit": "hardly moved by either",
+    }

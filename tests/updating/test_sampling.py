@@ -53,6 +53,13 @@ def test_divergences_fail():
     assert diagnose(_good(), NAMES, NAMES, 3).failures == ("3 divergent transitions",)
 
 
+def test_constants_alone_have_nothing_to_converge():
+    found = diagnose(_good(), NAMES, ("deck.constant",), 0)
+    assert found.passed
+    assert found.ess_bulk_min == 4000.0
+    assert diagnose(_good(), NAMES, (), 2).failures == ("2 divergent transitions",)
+
+
 def test_variables_that_no_limit_state_uses_are_not_judged():
     chains = _good()
     chains[1, :, 1] += 5.0
@@ -111,3 +118,16 @@ def test_pymc_alone_agrees(example_spec, example_sampler):
     difference = found.whitened.mean(axis=(0, 1)) - fast.whitened.mean(axis=(0, 1))
     assert np.abs(difference).max() < 0.3
     assert found.log_likelihood.mean() == pytest.approx(fast.log_likelihood.mean(), abs=1.0)
+
+
+def test_an_interrupted_sampling_is_not_taken_for_a_whole_one(example_sampler, monkeypatch):
+    import nutpie
+
+    real = nutpie.sample
+
+    def interrupted(*arguments, **settings):
+        return real(*arguments, **{**settings, "draws": settings["draws"] // 2})
+
+    monkeypatch.setattr(nutpie, "sample", interrupted)
+    with pytest.raises(KeyboardInterrupt):
+        example_sampler.sample(1, SETTINGS, lambda _: None)

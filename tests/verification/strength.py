@@ -17,7 +17,7 @@ from scipy import optimize, special, stats
 
 from assess.mechanics import concrete
 from assess.updating.model import build_model, specify
-from assess.updating.prior import VAGUE_LEVEL_SD, VAGUE_SCATTER_SD
+from assess.updating.prior import VAGUE_LEVEL, VAGUE_SCATTER
 from assess.updating.sampling import NutpieSampler, Settings
 from tests.verification.cases import base, read
 from tests.verification.check import MEMORY, RECOMPUTED, Check
@@ -116,23 +116,23 @@ class CoreModel:
 
 def vague_factor(values: FloatArray, probability: float) -> float:
     """Factor k under the tool's vague prior, by quadrature over ln sigma, level in closed form."""
-    log_scatter = np.linspace(np.log(0.15) - 4.0, np.log(0.15) + 30.0, 40_001)
+    centre_mpa, level_sd = VAGUE_LEVEL
+    log_scatter = np.linspace(*np.log(VAGUE_SCATTER), 40_001)  # its log-uniform prior is flat here
     local = np.exp(2.0 * log_scatter)
     variance = local + np.log1p(WITHIN**2)
     n, mean = len(values), values.mean()
     squares = float(((values - mean) ** 2).sum())
-    about = variance / n + VAGUE_LEVEL_SD**2
+    about = variance / n + level_sd**2
     log_weight = (
-        stats.norm.logpdf(log_scatter, np.log(0.15), VAGUE_SCATTER_SD)
-        - 0.5 * (n - 1) * np.log(variance)
+        -0.5 * (n - 1) * np.log(variance)
         - 0.5 * squares / variance
         - 0.5 * np.log(about)
-        - 0.5 * (mean - np.log(30.0)) ** 2 / about
+        - 0.5 * (mean - np.log(centre_mpa)) ** 2 / about
     )
     weight = np.exp(log_weight - log_weight.max())
     weight /= weight.sum()
-    precision = n / variance + VAGUE_LEVEL_SD**-2.0
-    centre = (n * mean / variance + np.log(30.0) * VAGUE_LEVEL_SD**-2.0) / precision
+    precision = n / variance + level_sd**-2.0
+    centre = (n * mean / variance + np.log(centre_mpa) * level_sd**-2.0) / precision
     spread = np.sqrt(local + 1.0 / precision)
     x = optimize.brentq(
         lambda v: float(weight @ special.ndtr((v - centre) / spread)) - probability, -80.0, 10.0

@@ -24,6 +24,8 @@ def diagnostics(record: RunRecord) -> Section:
     checks = _checks(record)
     if checks is not None:
         blocks.append(checks)
+    if record.power_scaling:
+        blocks.append(_power_scaling(record))
     if record.conflicts:
         blocks.append(Paragraph(["What must be read about fit and prior:"]))
         blocks.append(
@@ -35,6 +37,33 @@ def diagnostics(record: RunRecord) -> Section:
     if effort:
         blocks.append(_effort(record))
     return Section("Diagnostics", blocks)
+
+
+def _power_scaling(record: RunRecord) -> Table:
+    labels = {variable.name: variable.label for variable in record.variables}
+    rows = [
+        [
+            text_cell(labels.get(item.variable, item.variable)),
+            Cell(item.prior, Form.SHARE),
+            Cell(item.data, Form.SHARE),
+            text_cell(words.power_scaling_words(item), bold=item.conflict),
+        ]
+        for item in record.power_scaling
+    ]
+    columns = [
+        Column("Variable"),
+        Column("Prior", right=True),
+        Column("Data", right=True),
+        Column("Reading", wide=True),
+    ]
+    notes = [
+        "Change of what is known after the last survey when the variable's own prior, or all data, "
+        "count for a little more or less (power scaling, Kallioinen et al. 2024, "
+        "doi:10.1007/s11222-023-10366-5); 0.05 and more is felt. Where both are felt, prior and "
+        "data may disagree: check the prior's source. Data so many that a little more or less of "
+        "them changes nothing show as not felt."
+    ]
+    return Table("What prior and data contribute", columns, rows, notes)
 
 
 def _checks(record: RunRecord) -> Table | None:

@@ -1,0 +1,158 @@
+"""What a run found, put together as the records that the report is made from."""
+
+from collections.abc import Sequence
+
+from assess.case.reader import Case
+from assess.decisions.economics import option_results
+from assess.decisions.results import (
+    Conflict,
+    DataRecord,
+    Provenance,
+    RunRecord,
+    SectionResult,
+    StageRecord,
+    Target,
+    VariableRecord,
+)
+from assess.decisions.sections import used_variables
+from assess.reliability.limit_states import LIMIT_STATES
+from assess.updating.checks import DataSet, surprises
+from assess.updating.kinds import KINDS
+from assess.updating.model import Spec
+from assess.updating.power_scaling import power_scaling
+from assess.updating.stages import StageDraws
+
+
+def run_record(
+    case: Case,
+    spec: Spec,
+    stages: Sequence[StageDraws],
+    results: Sequence[SectionResult],
+    sets: Sequence[DataSet],
+    wanted: Target,
+) -> RunRecord:
+    """Assemble what was found.
+
+    Parameters
+    ----------
+    case, spec : Case, Spec
+        The case and its measurements.
+    stages : sequence of StageDraws
+        Prior and posteriors.
+    results : sequence of SectionResult
+        Of all sections, stages and options.
+    sets : sequence of DataSet
+        Checked data sets.
+    wanted : Target
+        What indices are held against.
+
+    Returns
+    -------
+    RunRecord
+        Without doubts and provenance, which the run adds.
+    """
+    structure = case.spec.structure
+    costs = case.spec.decision.costs
+    names = [draws.name for draws in stages]
+    return RunRecord(
+        title=structure.name,
+        description=" ".join(filter(None, (structure.description, structure.note))),
+        built=structure.built.year,
+        assessed=structure.assessed,
+        horizon=structure.horizon,
+        invented=structure.invented,
+        target=wanted,
+        stages=[_stage_record(draws) for draws in stages],
+        variables=_variable_records(case, spec, stages),
+        data=[_data_record(item, stages) for item in sets],
+        results=results,
+        options=option_results(case, results, names[-1]),
+        doubts=(),
+        conflicts=[Conflict(*pair) for pair in surprises(sets, names)],
+        assumptions=_assumptions(case),
+        currency="" if costs is None else costs.currency,
+        discount_rate=None if costs is None else costs.discount_rate,
+        failure_cost=None if costs is None else costs.failure,
+        provenance=Provenance("", "", 0, {}, {}, {}, ""),
+        power_scaling=power_scaling(stages[-1], spec.prior, used_variables(case)),
+    )
+
+
+def _stage_record(draws: StageDraws) -> StageRecord:
+    found = draws.diagnostics
+    return StageRecord(
+        draws.name,
+        draws.date,
+        draws.chains,
+        draws.physical.shape[1],
+        found.rhat_max,
+        found.ess_bulk_min,
+        found.ess_tail_min,
+        draws.divergences,
+        found.worst,
+        draws.retried,
+        found.passed,
+        found.failures,
+    )
+
+
+def _variable_records(case: Case, spec: Spec, stages: Sequence[StageDraws]) -> list[VariableRecord]:
+    used = set(used_variables(case))
+    return [
+        VariableRecord(
+            name=variable.name,
+            label=f"{variable.label}, {variable.zone}" if variable.zone else variable.label,
+            symbol=variable.symbol,
+            unit=variable.unit,
+            zone=variable.zone,
+            source=variable.source,
+            used=variable.name in used,
+            draws={draws.name: draws.physical[..., i] for draws in stages},
+        )
+        for i, variable in enumerate(spec.prior.variables)
+    ]
+
+
+def _data_record(item: DataSet, stages: Sequence[StageDraws]) -> DataRecord:
+    stage = stages[item.stage]
+    absent = any(column.absent for column in item.kind.form.columns)
+    return DataRecord(
+        survey=stage.name,
+        date=stage.date,
+        kind=item.kind.form.key,
+        title=item.kind.form.title,
+        zone=item.zone,
+        unit=item.kind.unit,
+        log_scale=item.kind.log_scale,
+        values=item.values,
+        count=item.count,
+        censored=0 if absent else item.missing,
+        absent=item.missing if absent else 0,
+        sections=item.sections,
+        path="",
+        variable=f"{item.zone}.{item.kind.carrier}",
+        predictive=item.predictive,
+        p_values=item.p_values,
+    )
+
+
+def _assumptions(case: Case) -> list[str]:
+    """Collect what was assumed, each sentence once."""
+    said = [
+        "All variables that a zone shares are updated jointly and their draws stay joint; local "
+        "values differ from place to place within the zone.",
+    ]
+    if case.spec.dependence:
+        pairs = "; ".join(
+            f"{item.between[0]} with {item.between[1]}: {item.measure} {item.coefficient:g} "
+            f"({item.source})"
+            for item in case.spec.dependence
+        )
+        said.append(f"Dependence stated before the surveys: {pairs}.")
+    else:
+        said.append("No dependence between common variables was stated before the surveys.")
+    kinds = dict.fromkeys(item.kind for item in case.evidence)
+    said += [KINDS[kind].assumption for kind in kinds]
+    for entry in case.spec.sections().values():
+        said += LIMIT_STATES[entry.limit_state].assumptions(entry, case.spec)
+    return list(dict.fromkeys(said))
