@@ -17,6 +17,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 from scipy import special
+from scipy.spatial import cKDTree
 from scipy.stats import qmc
 
 FloatArray = NDArray[np.float64]
@@ -30,6 +31,7 @@ AXIS_SCOUT = 2.5  # distance of the scouts on the axes, in standard normal units
 CLOUD_SCOUT = 1.5  # scatter of the other scouts
 CLOUD = 16  # number of those
 ITERATIONS = 8
+PILOTS = 1000  # draws whose mode is searched from scratch
 WORTHWHILE = 0.02  # gain in the logarithm of the integrand for which a climb goes on
 SHARES = np.array([0.0, 0.05, 0.2, 0.5, 1.0])  # of the way to the linear form's maximum
 BISECTIONS = 30
@@ -45,6 +47,7 @@ class Problem:
     draws: int
     years: int
     load_ratio: FloatArray = field(default_factory=lambda: np.zeros(0))  # mode over scale, a year
+    features: FloatArray | None = None  # (n_draw, k) what makes draws alike, scaled alike
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -154,7 +157,6 @@ def find_modes(
        2018, section 3.4 (importance sampling centred at the maximum of the integrand).
     """
     years = np.array([year])
-    draws = np.arange(problem.draws)
     spent = 0
 
     def log_hazard(z: FloatArray, chosen: IntArray) -> FloatArray:
@@ -162,21 +164,47 @@ def find_modes(
         spent += z.shape[0] * z.shape[1]
         return problem.log_hazard(z, chosen, years)[..., 0]
 
-    scouts = _scouts(problem.dimension)
-    best = np.empty((problem.draws, problem.dimension))
-    for part in np.array_split(draws, max(1, problem.draws * len(scouts) // ELEMENTS)):
-        cloud = np.broadcast_to(scouts, (len(part), *scouts.shape))
-        best[part] = scouts[_height(log_hazard(cloud, part), cloud).argmax(axis=1)]
     mode = np.zeros((problem.draws, problem.dimension))
     peak = np.full(problem.draws, -np.inf)
-    around = problem.dimension + 1
-    for start in (best, *(starts or [np.zeros_like(best)])):
-        for part in np.array_split(draws, max(1, problem.draws * around // ELEMENTS)):
-            found, height = _climb(log_hazard, start[part], part)
+
+    def climb_from(start: FloatArray, chosen: IntArray) -> None:
+        size = max(1, len(chosen) * (problem.dimension + 1) // ELEMENTS)
+        for place in np.array_split(np.arange(len(chosen)), size):
+            part = chosen[place]
+            found, height = _climb(log_hazard, start[place], part)
             higher = height > peak[part]
             mode[part] = np.where(higher[:, None], found, mode[part])
             peak[part] = np.where(higher, height, peak[part])
+
+    pilot, rest, nearest = _pilot(problem)
+    scouts = _scouts(problem.dimension)
+    best = np.empty((len(pilot), problem.dimension))
+    for place in np.array_split(
+        np.arange(len(pilot)), max(1, len(pilot) * len(scouts) // ELEMENTS)
+    ):
+        cloud = np.broadcast_to(scouts, (len(place), *scouts.shape))
+        height = _height(log_hazard(cloud, pilot[place]), cloud)
+        best[place] = scouts[height.argmax(axis=1)]
+    climb_from(best, pilot)
+    for start in starts or [np.zeros_like(mode)]:
+        climb_from(start[pilot], pilot)
+    climb_from(mode[pilot[nearest]], rest)
     return mode, peak, spent
+
+
+def _pilot(problem: Problem) -> tuple[IntArray, IntArray, IntArray]:
+    """Pick the draws to search from scratch; give the others, and their nearest pilot each.
+
+    Draws that are alike fail alike: the mode of one starts the climb of its neighbours.
+    """
+    draws = np.arange(problem.draws)
+    if problem.features is None or problem.draws < 2 * PILOTS:
+        return draws, draws[:0], draws[:0]
+    # Spread over the chains, so that no stretch of a chain goes without.
+    pilot = np.linspace(0, problem.draws - 1, PILOTS).astype(np.int64)
+    rest = np.setdiff1d(draws, pilot)
+    _, nearest = cKDTree(problem.features[pilot]).query(problem.features[rest])
+    return pilot, rest, np.asarray(nearest, dtype=np.int64)
 
 
 def _scouts(dimension: int) -> FloatArray:

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from assess.case.forms import SectionEntry
 from assess.case.reader import Case
 from assess.case.spec import CaseSpec
+from assess.probability.normal_space import normal_scores
 from assess.reliability.importance import IntArray, Problem
 from assess.reliability.limit_state import Action, LimitState, Surroundings
 from assess.reliability.limit_states import LIMIT_STATES
@@ -185,7 +186,15 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
         )
         return np.asarray((mode[years] - capacity) / scale[years])
 
-    return Problem(log_hazard, len(names), state.draws, len(age), mode / scale)
+    return Problem(
+        log_hazard, len(names), state.draws, len(age), mode / scale, _features(state.common)
+    )
+
+
+def _features(common: Mapping[str, FloatArray]) -> FloatArray | None:
+    """Scores of the common variables that vary, (n_draw, n_variable)."""
+    columns = [draws for draws in common.values() if np.ptp(draws) > 0.0]
+    return normal_scores(np.column_stack(columns)) if columns else None
 
 
 def _surroundings(
