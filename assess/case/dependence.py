@@ -5,14 +5,9 @@ from typing import TYPE_CHECKING, Any
 
 from pydantic import BaseModel
 
-from assess.case.distributions import (
-    CurrentDistribution,
-    Distribution,
-    LengthDistribution,
-    NumberDistribution,
-    YearsDistribution,
-)
+from assess.case.distributions import Distribution, LengthDistribution
 from assess.case.forms import FloatArray
+from assess.case.processes import PROCESSES
 from assess.case.spec import Zone
 from assess.case.walking import items_at, mapping_at, read_or_none
 from assess.case.yamlfile import Document, Keys, listed, nearest
@@ -27,10 +22,11 @@ if TYPE_CHECKING:
 _SAID: dict[str, tuple[str, str, type[Distribution]]] = {
     "cover_mean": ("cover", "mean", LengthDistribution),
     "cover_scatter": ("cover", "scatter", LengthDistribution),
-    "onset": ("corrosion", "onset", YearsDistribution),
-    "onset_scatter": ("corrosion", "onset_scatter", NumberDistribution),
-    "current": ("corrosion", "current", CurrentDistribution),
-    "current_scatter": ("corrosion", "current_scatter", NumberDistribution),
+    **{
+        name: (key, name, meaning.distribution)
+        for key, process in PROCESSES.items()
+        for name, meaning in process.meanings.items()
+    },
 }
 
 
@@ -49,8 +45,8 @@ def known_variables(data: Mapping[Any, Any]) -> dict[str, Keys]:
     """
     found: dict[str, Keys] = {}
     for name in mapping_at(data, "zones"):
-        corroding = bool(mapping_at(data, "zones", name, "corrosion"))
-        for variable in Zone.variable_names(corroding):
+        zone = mapping_at(data, "zones", name)
+        for variable in Zone.variable_names([key for key in PROCESSES if zone.get(key)]):
             found[f"{name}.{variable}"] = ("zones", name)
     for name in mapping_at(data, "steel"):
         found[f"steel.{name}"] = ("steel", name)
@@ -155,8 +151,8 @@ def _unknown_variable(
 ) -> Fault:
     zone, _, variable = name.rpartition(".")
     what = "there is no such variable"
-    if variable in Zone.variable_names(True) and f"{zone}.cover_mean" in known:
-        what = f"zone {zone!r} has no corrosion, hence no such variable"
+    if variable in Zone.variable_names(PROCESSES) and f"{zone}.cover_mean" in known:
+        what = f"zone {zone!r} has no {_SAID[variable][0]}, hence no such variable"
     mend = nearest(name, known)
     return document.fault(keys, what, given=name, allowed=listed(known), mend=mend)
 

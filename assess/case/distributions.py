@@ -181,6 +181,20 @@ class YearsDistribution(Distribution):
     positive = True
 
 
+class DiffusionDistribution(Distribution):
+    """A distribution of a diffusion coefficient [mm²/yr]."""
+
+    unit = "mm^2/yr"
+    positive = True
+
+
+class RootTimeDistribution(Distribution):
+    """A distribution of a depth over the root of time [mm/yr^0.5]."""
+
+    unit = "mm/yr^0.5"
+    positive = True
+
+
 _KNOWN: tuple[type[Distribution], ...] = (
     NumberDistribution,
     LengthDistribution,
@@ -189,6 +203,8 @@ _KNOWN: tuple[type[Distribution], ...] = (
     MomentDistribution,
     CurrentDistribution,
     YearsDistribution,
+    DiffusionDistribution,
+    RootTimeDistribution,
 )
 
 

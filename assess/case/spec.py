@@ -5,7 +5,7 @@ The fields that depend on the kinds (`CaseSpec.surveys`, `Member.sections`,
 """
 
 import re
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from datetime import date
 from typing import Annotated, Any, ClassVar, Literal
 
@@ -19,14 +19,16 @@ from pydantic import (
     model_validator,
 )
 
-from assess.case.distributions import (
-    CurrentDistribution,
-    Distribution,
-    LengthDistribution,
-    NumberDistribution,
-    YearsDistribution,
-)
+from assess.case.distributions import LengthDistribution
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
+from assess.case.processes import (
+    PROCESSES,
+    Carbonation,
+    Chloride,
+    Corrosion,
+    Process,
+    only_positive,
+)
 from assess.case.quantities import (
     CoefficientOfVariation,
     ConcreteStrength,
@@ -127,22 +129,11 @@ class VagueConcrete(Closed):
     source: str | None = Field(None, description="why nothing is known")
 
 
-def _only_positive[D: Distribution](value: D) -> D:
-    """Refuse a distribution that reaches below zero for what has a logarithm or is a scatter."""
-    low, high = value.marginal().support
-    if low < 0.0 or high <= 0.0:
-        what = "must be a distribution of positive values only"
-        given = f"{value.distribution} from {low:.4g} to {high:.4g}"
-        mend = "or cut it off with lower: 0"
-        raise QuantityError(what, given, "such as lognormal or gamma", mend)
-    return value
-
-
 class ScatteredCover(Closed):
     """Cover by the distributions of its mean in the zone and of its scatter in place."""
 
     mean: LengthDistribution = Field(description="the zone's mean cover, as uncertain")
-    scatter: Annotated[LengthDistribution, AfterValidator(_only_positive)] = Field(
+    scatter: Annotated[LengthDistribution, AfterValidator(only_positive)] = Field(
         description="standard deviation of the cover from place to place, as uncertain"
     )
 
@@ -198,43 +189,30 @@ Cover = Annotated[
 ]
 
 
-class Corrosion(Closed):
-    """When reinforcement corrosion starts in a zone and how fast it goes."""
-
-    onset: Annotated[YearsDistribution, AfterValidator(_only_positive)] = Field(
-        description="zone median of the local onset, years after construction"
-    )
-    onset_scatter: Annotated[NumberDistribution, AfterValidator(_only_positive)] = Field(
-        description="standard deviation of ln(local onset) from place to place"
-    )
-    current: Annotated[CurrentDistribution, AfterValidator(_only_positive)] = Field(
-        description="zone median of the local current density"
-    )
-    current_scatter: Annotated[NumberDistribution, AfterValidator(_only_positive)] = Field(
-        description="standard deviation of ln(local current density) from place to place"
-    )
-    attack: Literal["pitting", "uniform"] = Field(description="how the bars lose section")
-
-
 class Zone(Closed):
     """A part of the structure with one concrete, one cover specification, one exposure."""
 
     concrete: Concrete = Field(description="what is known of the strength before the survey")
     cover: Cover = Field(description="what is known of the cover before the survey")
     corrosion: Corrosion | None = Field(None, description="left out: the zone stays sound")
+    chloride: Chloride | None = Field(None, description="how chlorides enter; for profiles")
+    carbonation: Carbonation | None = Field(None, description="how carbonation goes in")
     description: str | None = Field(None, description="where the zone is")
 
     @staticmethod
-    def variable_names(corroding: bool) -> tuple[str, ...]:
-        """Name the common variables of a zone that `dependence` may speak of."""
-        names = ("concrete_mean", "concrete_scatter", "cover_mean", "cover_scatter")
-        if not corroding:
-            return names
-        return (*names, "onset", "onset_scatter", "current", "current_scatter")
+    def variable_names(processes: Collection[str]) -> tuple[str, ...]:
+        """Name the common variables of a zone with some processes (keys of `PROCESSES`)."""
+        stated = (name for key in PROCESSES if key in processes for name in PROCESSES[key].meanings)
+        return ("concrete_mean", "concrete_scatter", "cover_mean", "cover_scatter", *stated)
+
+    def processes(self) -> dict[str, Process]:
+        """Give the processes that the zone has, by key."""
+        found = ((key, getattr(self, key)) for key in PROCESSES)
+        return {key: process for key, process in found if process is not None}
 
     def variables(self) -> tuple[str, ...]:
         """Name this zone's common variables."""
-        return self.variable_names(self.corrosion is not None)
+        return self.variable_names(self.processes())
 
 
 class Steel(Closed):

@@ -70,7 +70,7 @@ def _zone_variables(name: str, zone: Zone) -> list[AnyVariable]:
     return [
         *_concrete_variables(name, zone),
         *_cover_variables(name, zone),
-        *_corrosion_variables(name, zone),
+        *_process_variables(name, zone),
     ]
 
 
@@ -137,20 +137,12 @@ def _cover_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
     return [_stated(mean, cover.mean), _stated(scatter, cover.scatter)]
 
 
-def _corrosion_variables(zone_name: str, zone: Zone) -> list[AnyVariable]:
-    """Give the level and scatter of onset and current in a zone."""
-    corrosion = zone.corrosion
-    if corrosion is None:
-        return []
-    words = {
-        "onset": ("median onset of corrosion", "$t_i$", "yr"),
-        "onset_scatter": ("scatter of ln onset", "$\\sigma_{\\ln t}$", "-"),
-        "current": ("median corrosion current", "$i_{corr}$", "µA/cm²"),
-        "current_scatter": ("scatter of ln current", "$\\sigma_{\\ln i}$", "-"),
-    }
+def _process_variables(name: str, zone: Zone) -> list[AnyVariable]:
+    """Give the common variables of all processes of a zone."""
     return [
-        _stated((f"{zone_name}.{key}", *said, zone_name), getattr(corrosion, key))
-        for key, said in words.items()
+        _stated((f"{name}.{key}", meaning.label, meaning.symbol, meaning.unit, name), prior)
+        for process in zone.processes().values()
+        for key, meaning, prior in process.priors()
     ]
 
 
