@@ -3,17 +3,20 @@
 from collections.abc import Iterator
 from dataclasses import replace
 
+from pydantic import ValidationError
+
 from assess.case.dependence import matrix_faults
 from assess.case.reader import Case
 from assess.case.spec import GradedConcrete, NamedTarget
-from assess.case.yamlfile import listed
+from assess.case.yamlfile import listed, nearest
 from assess.decisions.targets import TARGET_SETS
 from assess.errors import Fault
 from assess.mechanics.concrete import GRADES
 from assess.probability.dependence import PairDependence
 from assess.reliability.limit_states import LIMIT_STATES
+from assess.units import QuantityError
 from assess.updating.kinds import KINDS
-from assess.updating.prior import joint_prior
+from assess.updating.prior import joint_prior, overridden
 from assess.updating.variables import Variable
 
 _RANKS = "state a rank correlation: spearman or kendall"
@@ -33,11 +36,26 @@ def further_faults(case: Case) -> list[Fault]:
         Sorted, each with its line.
     """
     faults = [fault for kind in KINDS.values() for fault in kind.faults(case)]
+    if faults:
+        case = _without_measuring(case)
     faults += _section_faults(case)
     faults += _target_faults(case)
-    grades = list(_grade_faults(case))
-    faults += grades or _dependence_faults(case)  # the prior needs its grades
+    names = list(_grade_faults(case)) + list(_pooling_faults(case))
+    faults += names or list(_prior_faults(case)) or _dependence_faults(case)  # in this order
     return sorted(set(faults))
+
+
+def _without_measuring(case: Case) -> Case:
+    """Leave out what was measured, where it cannot be arranged, and all that speaks of it."""
+    kinds = tuple(KINDS)
+    kept = tuple(
+        stated
+        for stated in case.spec.dependence
+        if not any(name.startswith(kinds) for name in stated.between)
+    )
+    priors = {name: said for name, said in case.spec.priors.items() if not name.startswith(kinds)}
+    spec = case.spec.model_copy(update={"dependence": kept, "priors": priors})
+    return replace(case, spec=spec, evidence=())
 
 
 def _section_faults(case: Case) -> Iterator[Fault]:
@@ -68,14 +86,77 @@ def _grade_faults(case: Case) -> Iterator[Fault]:
                 )
 
 
+def _pooling_faults(case: Case) -> Iterator[Fault]:
+    """Find pooled zones that do not exist, lack the variable, or are pooled twice."""
+    seen: set[str] = set()
+    for index, stated in enumerate(case.spec.pooling):
+        for j, zone in enumerate(stated.zones):
+            keys = ("pooling", index, "zones", j)
+            name = f"{zone}.{stated.variable}"
+            if zone not in case.spec.zones:
+                known = case.spec.zones
+                what, near = "there is no zone of this name", nearest(zone, known)
+                yield case.document.fault(keys, what, given=zone, allowed=listed(known), mend=near)
+            elif stated.variable not in case.spec.zones[zone].variables():
+                known_here = case.spec.zones[zone].variables()
+                what = f"zone {zone!r} has no such variable"
+                near = nearest(stated.variable, known_here)
+                yield case.document.fault(
+                    keys, what, given=stated.variable, allowed=listed(known_here), mend=near
+                )
+            elif name in seen:
+                yield case.document.fault(keys, "the variable is pooled twice", given=name)
+            seen.add(name)
+
+
+def _without(case: Case, *parts: str) -> Case:
+    """Give the case without what is to be checked."""
+    return replace(
+        case,
+        spec=case.spec.model_copy(
+            update={part: type(getattr(case.spec, part))() for part in parts}
+        ),
+    )
+
+
+def _prior_faults(case: Case) -> Iterator[Fault]:
+    """Check what the case puts in place of the tool's own priors."""
+    known = {one.name: one for one in joint_prior(_without(case, "priors", "dependence")).variables}
+    for name in case.spec.priors:
+        keys = ("priors", name)
+        if name not in known:
+            what, near = "there is no such variable", nearest(name, known)
+            yield case.document.fault(keys, what, given=name, allowed=listed(known), mend=near)
+            continue
+        try:
+            overridden(known[name], case.spec)
+        except ValidationError as error:
+            for item in error.errors(include_url=False):
+                said = item.get("ctx", {}).get("error")
+                place = (*keys, *item["loc"])
+                if isinstance(said, QuantityError):
+                    yield case.document.fault(
+                        place, said.what, given=said.given, allowed=said.allowed, mend=said.mend
+                    )
+                else:
+                    yield case.document.fault(place, item["msg"].lower())
+
+
 def _dependence_faults(case: Case) -> list[Fault]:
     """Check the stated dependence with the true marginals of all variables."""
     document = case.document
-    independent = replace(case, spec=case.spec.model_copy(update={"dependence": ()}), evidence=())
-    variables = joint_prior(independent).variables
+    variables = joint_prior(_without(case, "dependence")).variables
+    known = [one.name for one in variables]
     marginals = {one.name: one.marginal for one in variables if isinstance(one, Variable)}
     faults, pairs = [], []
     for index, stated in enumerate(case.spec.dependence):
+        strangers = [(i, name) for i, name in enumerate(stated.between) if name not in known]
+        for i, name in strangers:
+            what, near = "there is no such variable", nearest(name, known)
+            place = ("dependence", index, "between", i)
+            faults.append(document.fault(place, what, given=name, allowed=listed(known), mend=near))
+        if strangers:
+            continue
         without = [name for name in stated.between if name not in marginals]
         if stated.measure == "pearson" and without:
             what = "a Pearson coefficient needs a variable whose distribution stands by itself"

@@ -52,7 +52,7 @@ def cross_check(
         *_target(document, vocabulary),
         *_assessment(document),
         *_option_years(document),
-        *dependence_faults(document),
+        *dependence_faults(document, vocabulary.evidence),
     ]
     wrong, doubts = _survey_dates(document, today)
     return sorted({*faults, *wrong}), sorted(set(doubts))

@@ -1,6 +1,6 @@
 """Checks of the dependence that a case file states between common variables."""
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterator, Mapping
 from typing import TYPE_CHECKING, Any
 
 from pydantic import BaseModel
@@ -53,13 +53,15 @@ def known_variables(data: Mapping[Any, Any]) -> dict[str, Keys]:
     return found
 
 
-def dependence_faults(document: Document) -> Iterator[Fault]:
+def dependence_faults(document: Document, kinds: Collection[str] = ()) -> Iterator[Fault]:
     """Check the dependence in the prior: names, coefficients, and whether they hold together.
 
     Parameters
     ----------
     document : Document
         The case file.
+    kinds : collection of str
+        Kinds of evidence: their measuring variables, named after them, are looked at later.
 
     Yields
     ------
@@ -77,7 +79,8 @@ def dependence_faults(document: Document) -> Iterator[Fault]:
             continue
         strangers = [(i, name) for i, name in enumerate(between) if name not in known]
         for i, name in strangers:
-            yield _unknown_variable(document, (*keys, "between", i), name, known)
+            if not name.startswith((*kinds, "pool_")):
+                yield _unknown_variable(document, (*keys, "between", i), name, known)
         both = frozenset(between)
         if both in seen and not strangers:
             what = f"the dependence of line {seen[both]} is between the same variables"

@@ -10,8 +10,10 @@ from pydantic.json_schema import JsonSchemaValue
 from pydantic_core import CoreSchema
 
 from assess import units
+from assess.case.catalogue import fitting, from_catalogue
 from assess.case.forms import Closed
 from assess.case.quantities import CoefficientOfVariation, InUnit
+from assess.case.yamlfile import listed
 from assess.units import NONE, QuantityError
 
 if TYPE_CHECKING:
@@ -25,7 +27,8 @@ class Distribution(Closed):
     """What is known of an uncertain quantity: its kind, one way to fix it, and who says so.
 
     The ways: `mean` with `V` or `sd` (alone for a constant); or two `quantiles`; or
-    `parameters`. Quantities are in `unit`, which a subclass states.
+    `parameters`. Quantities are in `unit`, which a subclass states. Or `catalogue` alone, naming
+    a published prior.
     """
 
     unit: ClassVar[str] = NONE
@@ -46,6 +49,17 @@ class Distribution(Closed):
     lower: float | None = Field(None, description="lower bound, cutting the distribution off")
     upper: float | None = Field(None, description="upper bound, cutting the distribution off")
     source: str = Field(min_length=1, description="document or reasoning it comes from")
+
+    @model_validator(mode="before")
+    @classmethod
+    def _by_name(cls, data: Any) -> Any:
+        """Put what the catalogue says in place of the name of its entry."""
+        if not isinstance(data, Mapping) or "catalogue" not in data:
+            return data
+        if len(data) > 1:
+            what = "a distribution from the catalogue says nothing else"
+            raise QuantityError(what, listed(data), "catalogue alone, or no catalogue")
+        return from_catalogue(data["catalogue"], cls.unit)
 
     @field_validator(*_IN_UNIT, mode="before")
     @classmethod
@@ -134,6 +148,13 @@ class Distribution(Closed):
             properties[name] |= {"anyOf": [values], "x-unit": cls.unit}
         for name in (*_IN_UNIT, "quantiles", "parameters", "V"):
             properties[name].pop("default", None)
+        resolved = handler.resolve_ref_schema(reference)
+        properties["catalogue"] = {
+            "enum": fitting(cls.unit),
+            "description": "name of a published prior, in place of everything else",
+        }
+        required = resolved.pop("required")
+        resolved["anyOf"] = [{"required": required}, {"required": ["catalogue"]}]
         return reference
 
 

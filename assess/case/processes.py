@@ -35,7 +35,7 @@ def only_positive[D: Distribution](value: D) -> D:
     return value
 
 
-def _within_one[D: Distribution](value: D) -> D:
+def within_one[D: Distribution](value: D) -> D:
     """Refuse a distribution that reaches beyond 0 to 1."""
     low, high = value.marginal().support
     if low < 0.0 or high > 1.0:
@@ -61,8 +61,7 @@ class Meaning:
     @property
     def unit(self) -> str:
         """Unit as people read it."""
-        plain = self.distribution.unit
-        return plain.replace("^2", "²").replace("^0.5", "^½")
+        return self.distribution.unit.replace("^2", "²")
 
 
 class Process(Closed):
@@ -137,7 +136,7 @@ class Chloride(Process):
     diffusion_scatter: _Number = Field(
         description="standard deviation of ln(local diffusion coefficient) from place to place"
     )
-    age_exponent: Annotated[NumberDistribution, AfterValidator(_within_one)] = Field(
+    age_exponent: Annotated[NumberDistribution, AfterValidator(within_one)] = Field(
         description="exponent a of the fall of the coefficient with age, (t0 / t)^a"
     )
     reference_age: Annotated[float, InUnit("yr", "a reference age", above=0.0)] = Field(

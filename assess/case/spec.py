@@ -19,7 +19,7 @@ from pydantic import (
     model_validator,
 )
 
-from assess.case.distributions import LengthDistribution
+from assess.case.distributions import LengthDistribution, NumberDistribution
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
 from assess.case.processes import (
     PROCESSES,
@@ -28,6 +28,7 @@ from assess.case.processes import (
     Corrosion,
     Process,
     only_positive,
+    within_one,
 )
 from assess.case.quantities import (
     CoefficientOfVariation,
@@ -294,6 +295,17 @@ class Dependence(Closed):
 _COEFFICIENTS = ("spearman", "kendall", "pearson")
 
 
+class Pooling(Closed):
+    """Zones whose variable is alike to a degree that the measurements tell."""
+
+    variable: Text = Field(description="variable of each zone, such as concrete_mean")
+    zones: tuple[Text, ...] = Field(min_length=2, description="zones that are pooled")
+    share: Annotated[NumberDistribution, AfterValidator(within_one)] = Field(
+        description="share of the variable's prior variance that is the zone's own, as uncertain; "
+        "0: the zones are one, 1: they have nothing in common"
+    )
+
+
 class NamedTarget(Closed):
     """Target index of a published document."""
 
@@ -358,6 +370,12 @@ class CaseSpec(Closed):
     surveys: tuple[Survey, ...] = Field((), description="visits with their measurements")
     members: tuple[Member, ...] = Field(min_length=1, description="members to check")
     dependence: tuple[Dependence, ...] = Field((), description="dependence in the prior")
+    pooling: tuple[Pooling, ...] = Field((), description="zones that are alike to a degree")
+    priors: dict[Text, dict[str, Any]] = Field(
+        {},
+        description="distributions in place of the tool's own, by variable, such as "
+        "cover_meter_1.bias; in the unit of the variable",
+    )
     decision: Decision = Field(description="what is to be decided")
     sampling: Sampling = Field(default_factory=lambda: Sampling(), description="how it is computed")
 

@@ -5,13 +5,14 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from assess.case.distributions import Distribution
+from assess.case.distributions import Distribution, distribution_of
 from assess.case.reader import Case
 from assess.case.spec import (
     CaseSpec,
     GradedConcrete,
     MeasuredConcrete,
     NominalCover,
+    Pooling,
     Steel,
     Zone,
 )
@@ -20,7 +21,7 @@ from assess.probability.dependence import PairDependence, score_correlation_matr
 from assess.probability.log_uniform import LogUniform
 from assess.probability.marginals import make_marginal
 from assess.updating.kinds import KINDS
-from assess.updating.variables import AnyVariable, JointPrior, LevelGivenScatter, Variable
+from assess.updating.variables import AnyVariable, JointPrior, LevelGivenScatter, Pooled, Variable
 
 FloatArray = NDArray[np.float64]
 
@@ -53,7 +54,59 @@ def joint_prior(case: Case) -> JointPrior:
     variables += [_steel_variable(name, steel) for name, steel in case.spec.steel.items()]
     for kind in KINDS.values():
         variables += kind.variables(case)
+    variables = [overridden(variable, case.spec) for variable in variables]
+    variables = pooled(variables, case.spec.pooling)
     return JointPrior(tuple(variables), _correlation(case.spec, variables))
+
+
+def overridden(variable: AnyVariable, spec: CaseSpec) -> AnyVariable:
+    """Put the distribution that the case states under `priors` in place of a variable's own.
+
+    Raises
+    ------
+    pydantic.ValidationError
+        If what is stated is no distribution in the variable's unit.
+    """
+    stated = spec.priors.get(variable.name)
+    if stated is None:
+        return variable
+    read = distribution_of(variable.unit).model_validate(stated)
+    head = (variable.name, variable.label, variable.symbol, variable.unit, variable.zone)
+    return _stated(head, read)
+
+
+def pooled(variables: Sequence[AnyVariable], pooling: Sequence[Pooling]) -> list[AnyVariable]:
+    """Let zones share a part of the scores of some variables.
+
+    Parameters
+    ----------
+    variables : sequence
+        All variables, none pooled yet.
+    pooling : sequence of Pooling
+        What the case says.
+
+    Returns
+    -------
+    list
+        The shared scores and the shares before all others, for these depend on them.
+    """
+    found = {variable.name: variable for variable in variables}
+    first: list[AnyVariable] = []
+    for number, stated in enumerate(pooling, start=1):
+        group = f"pool_{number}.{stated.variable}"
+        words = f"{stated.variable} of {', '.join(stated.zones)}"
+        shared, share = f"{group}.shared", f"{group}.share"
+        standard = make_marginal("normal", mean=0.0, sd=1.0)
+        first += [
+            Variable(shared, f"shared score, {words}", "$u$", "-", "", "by construction", standard),
+            _stated((share, f"zones' own share, {words}", "$w$", "-", ""), stated.share),
+        ]
+        for zone in stated.zones:
+            inner = found[f"{zone}.{stated.variable}"]
+            if isinstance(inner, Pooled):
+                raise ValueError(f"{inner.name} is pooled twice")
+            found[inner.name] = Pooled(inner, shared, share)
+    return [*first, *found.values()]
 
 
 def _correlation(spec: CaseSpec, variables: Sequence[AnyVariable]) -> FloatArray:

@@ -64,7 +64,61 @@ class LevelGivenScatter:
         return op.exp(self.log_mean + known[self.scatter] * score / np.sqrt(self.tests))
 
 
-AnyVariable = Variable | LevelGivenScatter
+@dataclass(frozen=True, slots=True)
+class Pooled:
+    r"""Variable of one zone that shares a part of its score with those of other zones.
+
+    The score is :math:`\sqrt{1 - w}\, u + \sqrt{w}\, v` with u the score that the zones share,
+    v the zone's own and w its share of the variance: standard normal for every w, so that the
+    variable keeps its prior, while the zones' values tell w [1]_.
+
+    References
+    ----------
+    .. [1] A. Gelman et al., Bayesian Data Analysis, 3rd ed., 2013, chapter 5 (exchangeable groups).
+    """
+
+    inner: "Variable | LevelGivenScatter"
+    shared: str  # name of the variable that is the shared score
+    share: str  # name of the variable that is w
+
+    @property
+    def name(self) -> str:
+        """Name of the variable."""
+        return self.inner.name
+
+    @property
+    def label(self) -> str:
+        """Name in words."""
+        return self.inner.label
+
+    @property
+    def symbol(self) -> str:
+        """Symbol for axes."""
+        return self.inner.symbol
+
+    @property
+    def unit(self) -> str:
+        """Unit, "-" if none."""
+        return self.inner.unit
+
+    @property
+    def zone(self) -> str:
+        """Zone that it belongs to."""
+        return self.inner.zone
+
+    @property
+    def source(self) -> str:
+        """Where its prior comes from."""
+        return f"{self.inner.source}; pooled with other zones"
+
+    def value(self, score: Numeric, known: Mapping[str, Numeric]) -> Numeric:
+        """Map the zone's own score to the physical value, given the shared one."""
+        own = known[self.share]
+        mixed = op.sqrt(1.0 - own) * known[self.shared] + op.sqrt(own) * score
+        return self.inner.value(mixed, known)
+
+
+AnyVariable = Variable | LevelGivenScatter | Pooled
 
 
 @dataclass(frozen=True)
