@@ -4,8 +4,9 @@ from collections.abc import Callable, Iterable, Mapping
 from functools import partial
 from pathlib import Path
 
-from tests.verification.calibration import DESIGNS, calibrate
+from tests.verification.calibration import calibrate
 from tests.verification.check import Check
+from tests.verification.designs import DESIGNS
 from tests.verification.first_order import first_order
 from tests.verification.formulas import formulas
 from tests.verification.strength import annex_d, normal_gamma

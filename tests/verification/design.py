@@ -1,0 +1,34 @@
+"""What a simulation-based calibration is told of a kind of evidence."""
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from assess.updating.kind import Rows
+
+FloatArray = NDArray[np.float64]
+Values = Mapping[str, FloatArray]
+Spoil = Callable[[Rows, Values], tuple[Rows, Values]]
+
+
+@dataclass(frozen=True, slots=True)
+class Design:
+    """What is measured, which variables are ranked, and a fault that must be noticed."""
+
+    kind: str
+    surveys: tuple[dict[str, Any], ...]
+    tables: Mapping[str, str]
+    variables: tuple[str, ...]
+    spoil: Spoil
+    fault: str
+    corrosion: bool = False
+    zone: Mapping[str, Any] = field(default_factory=dict)  # more keys of the zone ``deck``
+    case: Mapping[str, Any] = field(default_factory=dict)  # more keys of the case
+
+
+def survey(date: str, kind: str, entry: dict[str, Any]) -> dict[str, Any]:
+    """Give a survey that brings one kind of evidence."""
+    return {"date": date, kind: entry}
