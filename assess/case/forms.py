@@ -121,6 +121,7 @@ class EvidenceForm:
     value: str  # name of the column that outlier and duplicate checks look at
     log_scale: bool = False  # outliers are judged on the logarithm
     judged: Judged | None = None  # left out: the value column is judged
+    zoned: bool = True  # whether a row speaks of a zone; loads and quantities do not
     doubts: Doubter = no_doubts
 
 

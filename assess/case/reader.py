@@ -219,7 +219,7 @@ class _Tables:
         self.doubts += doubts
         if table is None:
             return
-        wrong = list(_misplaced(self.document, table, entry.get("zone")))
+        wrong = list(_misplaced(self.document, table, entry.get("zone"))) if form.zoned else []
         self.faults += wrong
         if not wrong and not faults:
             zones, sections = _places(self.document, table, entry.get("zone"))

@@ -21,6 +21,7 @@ from pydantic import (
 
 from assess.case.distributions import LengthDistribution, NumberDistribution
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
+from assess.case.load_models import AnyLoadModel
 from assess.case.processes import (
     PROCESSES,
     Carbonation,
@@ -367,6 +368,9 @@ class CaseSpec(Closed):
     structure: Structure = Field(description="the structure and the time looked at")
     zones: dict[Text, Zone] = Field(min_length=1, description="zones by name")
     steel: dict[Text, Steel] = Field({}, description="reinforcement by name")
+    load_models: dict[Text, AnyLoadModel] = Field(
+        {}, description="variable loads whose yearly maxima are uncertain, by name"
+    )
     surveys: tuple[Survey, ...] = Field((), description="visits with their measurements")
     members: tuple[Member, ...] = Field(min_length=1, description="members to check")
     dependence: tuple[Dependence, ...] = Field((), description="dependence in the prior")

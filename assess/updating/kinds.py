@@ -4,6 +4,7 @@ from collections.abc import Iterator, Mapping
 from importlib.metadata import EntryPoint, entry_points
 from types import MappingProxyType
 
+from assess.updating.annual_maxima import AnnualMaxima
 from assess.updating.cores import Cores
 from assess.updating.cover import Cover
 from assess.updating.kind import EvidenceKind
@@ -13,7 +14,7 @@ from assess.updating.section_loss import SectionLoss
 # `EvidenceKind` which can be made without arguments.
 GROUP = "assess.evidence"
 
-OWN: tuple[EvidenceKind, ...] = (Cores(), Cover(), SectionLoss())
+OWN: tuple[EvidenceKind, ...] = (AnnualMaxima(), Cores(), Cover(), SectionLoss())
 
 
 def installed(points: Iterator[EntryPoint]) -> Iterator[EvidenceKind]:

@@ -52,6 +52,20 @@ def joint_prior(case: Case) -> JointPrior:
     for name, zone in case.spec.zones.items():
         variables += _zone_variables(name, zone)
     variables += [_steel_variable(name, steel) for name, steel in case.spec.steel.items()]
+    for name, model in case.spec.load_models.items():
+        variables += [
+            _stated(
+                (
+                    f"load.{name}.{key}",
+                    f"{meaning.label}, {name}",
+                    meaning.symbol,
+                    meaning.unit,
+                    "",
+                ),
+                prior,
+            )
+            for key, meaning, prior in model.priors()
+        ]
     for kind in KINDS.values():
         variables += kind.variables(case)
     variables = [overridden(variable, case.spec) for variable in variables]
