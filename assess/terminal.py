@@ -1,6 +1,5 @@
 """What a run shows on the terminal: the part at work, a bar, the table at the end."""
 
-import math
 import sys
 import threading
 from collections.abc import Iterator, Sequence
@@ -14,6 +13,7 @@ from rich.table import Table
 
 from assess.decisions.options import LEAVE
 from assess.decisions.results import RunRecord, SectionResult, Standing
+from assess.report import numbers
 
 # Short enough for a table in 100 columns; the report has them in full.
 SHORT = {
@@ -122,18 +122,13 @@ def _row(item: SectionResult, before: SectionResult | None) -> list[str]:
     return [
         item.section,
         *([] if before is None else [f"{before.reference.index[0]:.2f}"]),
-        _with_error(float(curve.index[0]), float(curve.error[0])),
+        numbers.index_with_error(float(curve.index[0]), float(curve.error[0])).replace(
+            numbers.NO_BREAK, " "
+        ),
         f"{curve.low[0]:.2f} to {curve.high[0]:.2f}",
         f"{curve.index[-1]:.2f}",
         words,
     ]
-
-
-def _with_error(index: float, error: float) -> str:
-    """Index and its error, rounded up, for no error is zero."""
-    if not math.isfinite(error):
-        return f"{index:.2f}"
-    return f"{index:.2f} ± {math.ceil(100.0 * error - 1e-9) / 100.0:.2f}"
 
 
 def _options(record: RunRecord, stage: str) -> Iterator[str]:

@@ -25,6 +25,7 @@ IntArray = NDArray[np.int64]
 
 # (z of shape (n, k, dimension), the n draws, the years) -> ln Lambda, shape (n, k, n_year)
 LogHazard = Callable[[FloatArray, IntArray, IntArray], FloatArray]
+Hazard = Callable[[FloatArray, IntArray], FloatArray]  # the same for one year, (n, k)
 
 STEP = 1e-3  # of the finite differences, in standard normal units
 AXIS_SCOUT = 2.5  # distance of the scouts on the axes, in standard normal units
@@ -35,6 +36,8 @@ PILOTS = 1000  # draws whose mode is searched from scratch
 WORTHWHILE = 0.02  # gain in the logarithm of the integrand for which a climb goes on
 SHARES = np.array([0.0, 0.05, 0.2, 0.5, 1.0])  # of the way to the linear form's maximum
 BISECTIONS = 30
+APART = 1.5  # distance from which modes, and scouts of a second one, count as two
+SECOND_SHARE = 0.005  # of the failure probability, for which second modes are sampled too
 ELEMENTS = 400_000  # capacity evaluations held in memory at a time
 
 
@@ -120,9 +123,27 @@ def log_failure(log_hazard: FloatArray) -> FloatArray:
     return np.where(small, log_hazard, np.log(-np.expm1(-np.where(small, 1.0, hazard))))
 
 
-def find_modes(
-    problem: Problem, year: int, starts: Sequence[FloatArray] = ()
-) -> tuple[FloatArray, FloatArray, int]:
+@dataclass(frozen=True, slots=True, eq=False)
+class Modes:
+    """Where failing in one year is most likely to come from, for each draw.
+
+    Attributes
+    ----------
+    centres : tuple of ndarray, each (n_draw, dimension)
+        The highest maximum of each draw; and, where it matters for the failure probability of
+        all draws together, a second one apart from it.
+    heights : ndarray, shape (n_draw,)
+        ln P(fail in the year | draw, z) - |z|^2/2 at the first.
+    evaluations : int
+        Capacity evaluations spent.
+    """
+
+    centres: tuple[FloatArray, ...]
+    heights: FloatArray
+    evaluations: int
+
+
+def find_modes(problem: Problem, year: int, starts: Sequence[FloatArray] = ()) -> Modes:
     """Find for each draw where failing in a year is most likely to come from.
 
     Parameters
@@ -136,10 +157,9 @@ def find_modes(
 
     Returns
     -------
-    tuple
-        Where ln P(fail in the year | draw, z) - |z|^2/2 is largest, shape (n_draw, dimension),
-        its value there (n_draw,), and the evaluations spent. The places centre a proposal
-        density, so they need not be exact; a poor one costs accuracy, never bias.
+    Modes
+        They centre a proposal density, so they need not be exact; a poor one costs accuracy,
+        never bias.
 
     Notes
     -----
@@ -147,7 +167,7 @@ def find_modes(
     maximum that the linear form has, as the first-order search of the design point does [1]_,
     and goes as much of that way as the true objective likes best. Scouts lead off a plateau (a
     bar that has not begun to corrode has no gradient in its onset): points on every axis, and
-    scrambled Sobol points.
+    scrambled Sobol points. The best scout away from the maximum that was found leads to a second.
 
     References
     ----------
@@ -164,32 +184,68 @@ def find_modes(
         spent += z.shape[0] * z.shape[1]
         return problem.log_hazard(z, chosen, years)[..., 0]
 
-    mode = np.zeros((problem.draws, problem.dimension))
-    peak = np.full(problem.draws, -np.inf)
+    pilot, rest, nearest = _pilot(problem)
+    scouts = _scouts(problem.dimension)
+    seen = _look_around(log_hazard, scouts, pilot)
+    first = _Found.nothing(problem)
+    first.climb(log_hazard, scouts[seen.argmax(axis=1)], pilot)
+    for start in starts or [np.zeros_like(first.mode)]:
+        first.climb(log_hazard, start[pilot], pilot)
+    second = _Found.nothing(problem)
+    apart = np.linalg.norm(scouts - first.mode[pilot, None, :], axis=-1) > APART
+    second.climb(log_hazard, scouts[np.where(apart, seen, -np.inf).argmax(axis=1)], pilot)
+    worth = _share_apart(first, second, pilot) > SECOND_SHARE
+    first.climb(log_hazard, first.mode[pilot[nearest]], rest)
+    centres: tuple[FloatArray, ...] = (first.mode,)
+    if worth:
+        second.climb(log_hazard, second.mode[pilot[nearest]], rest)
+        centres = (first.mode, second.mode)
+    return Modes(centres, first.height, spent)
 
-    def climb_from(start: FloatArray, chosen: IntArray) -> None:
-        size = max(1, len(chosen) * (problem.dimension + 1) // ELEMENTS)
+
+@dataclass(slots=True, eq=False)
+class _Found:
+    """The highest point of each draw that climbs have reached."""
+
+    mode: FloatArray  # (n_draw, dimension)
+    height: FloatArray  # (n_draw,)
+
+    @staticmethod
+    def nothing(problem: Problem) -> "_Found":
+        """Start at the origin, with no height."""
+        shape = (problem.draws, problem.dimension)
+        return _Found(np.zeros(shape), np.full(problem.draws, -np.inf))
+
+    def climb(self, log_hazard: Hazard, start: FloatArray, chosen: IntArray) -> None:
+        """Climb from the starts of some draws, and keep what is higher."""
+        size = max(1, len(chosen) * (start.shape[1] + 1) // ELEMENTS)
         for place in np.array_split(np.arange(len(chosen)), size):
             part = chosen[place]
             found, height = _climb(log_hazard, start[place], part)
-            higher = height > peak[part]
-            mode[part] = np.where(higher[:, None], found, mode[part])
-            peak[part] = np.where(higher, height, peak[part])
+            higher = height > self.height[part]
+            self.mode[part] = np.where(higher[:, None], found, self.mode[part])
+            self.height[part] = np.where(higher, height, self.height[part])
 
-    pilot, rest, nearest = _pilot(problem)
-    scouts = _scouts(problem.dimension)
-    best = np.empty((len(pilot), problem.dimension))
-    for place in np.array_split(
-        np.arange(len(pilot)), max(1, len(pilot) * len(scouts) // ELEMENTS)
-    ):
+
+def _look_around(log_hazard: Hazard, scouts: FloatArray, chosen: IntArray) -> FloatArray:
+    """Height of all scouts for some draws, (n_chosen, n_scout)."""
+    seen = np.empty((len(chosen), len(scouts)))
+    size = max(1, len(chosen) * len(scouts) // ELEMENTS)
+    for place in np.array_split(np.arange(len(chosen)), size):
         cloud = np.broadcast_to(scouts, (len(place), *scouts.shape))
-        height = _height(log_hazard(cloud, pilot[place]), cloud)
-        best[place] = scouts[height.argmax(axis=1)]
-    climb_from(best, pilot)
-    for start in starts or [np.zeros_like(mode)]:
-        climb_from(start[pilot], pilot)
-    climb_from(mode[pilot[nearest]], rest)
-    return mode, peak, spent
+        seen[place] = _height(log_hazard(cloud, chosen[place]), cloud)
+    return seen
+
+
+def _share_apart(first: _Found, second: _Found, pilot: IntArray) -> float:
+    """Share of the failure probability that second modes apart from the first ones hold.
+
+    By the heights alone: the widths of two modes of one draw are taken as alike.
+    """
+    top = first.height[pilot].max()
+    distance = np.linalg.norm(first.mode[pilot] - second.mode[pilot], axis=1)
+    other = np.where(distance > APART, np.exp(second.height[pilot] - top), 0.0)
+    return float(other.sum() / np.exp(first.height[pilot] - top).sum())
 
 
 def _pilot(problem: Problem) -> tuple[IntArray, IntArray, IntArray]:
@@ -219,9 +275,7 @@ def _height(log_hazard: FloatArray, z: FloatArray) -> FloatArray:
     return np.asarray(log_failure(log_hazard) - 0.5 * np.einsum("...i,...i->...", z, z))
 
 
-def _climb(
-    log_hazard: Callable[[FloatArray, IntArray], FloatArray], start: FloatArray, part: IntArray
-) -> tuple[FloatArray, FloatArray]:
+def _climb(log_hazard: Hazard, start: FloatArray, part: IntArray) -> tuple[FloatArray, FloatArray]:
     """Climb from the starts of some draws to where the integrand is largest."""
     count, dimension = start.shape
     offsets = np.concatenate([np.zeros((1, dimension)), STEP * np.eye(dimension)])

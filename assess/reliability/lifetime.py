@@ -221,10 +221,10 @@ def first_proposal(problem: Problem, seed: int) -> tuple[Proposal, int]:
     # The standard normal density itself bounds the weights wherever the modes do not reach.
     centres, heights, spent = [np.zeros((problem.draws, problem.dimension))], [], 0
     for year in sorted({0, problem.years - 1}):
-        mode, peak, evaluations = find_modes(problem, year, centres[1:])
-        centres.append(mode)
-        heights.append(np.exp(peak - peak.max()))
-        spent += evaluations
+        found = find_modes(problem, year, centres[1:])
+        centres += found.centres
+        heights.append(np.exp(found.heights - found.heights.max()))
+        spent += found.evaluations
     points = allocate(np.stack(heights, axis=1), FIRST_POINTS * problem.draws)
     state: int = np.random.SeedSequence(seed).generate_state(1).item()
     return Proposal(tuple(centres), points, state), spent

@@ -89,6 +89,8 @@ def _load_mean(hazard: FloatArray, failing: FloatArray, total: float) -> float:
 def _common_shares(state: SectionState, by_draw: FloatArray) -> list[tuple[str, float]]:
     """Share out the common variables' part; ``by_draw`` is each draw's share of failure."""
     columns = {name: draws for name, draws in state.common.items() if np.ptp(draws) > 0.0}
+    if not columns:
+        return []
     groups = [_COMMON_GROUPS.get(name.rpartition(".")[2], "steel strength") for name in columns]
     scores = normal_scores(np.column_stack(list(columns.values())))
     mean = by_draw @ scores

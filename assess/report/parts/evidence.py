@@ -190,7 +190,7 @@ def _predictive_figure(record: RunRecord, sets: list[DataRecord]) -> FigureNode:
             stage: np.ravel(item.predictive[stage]) for stage in names if stage in item.predictive
         }
         view = figures.DensityView(
-            title=f"{item.title}, {item.date or item.survey}",
+            title=", ".join(filter(None, (item.title, item.zone, item.date or item.survey))),
             unit=item.unit,
             draws=draws,
             looks=looks,
