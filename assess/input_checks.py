@@ -6,6 +6,7 @@ from dataclasses import replace
 from pydantic import ValidationError
 
 from assess.case.dependence import matrix_faults
+from assess.case.events import LoadTest
 from assess.case.reader import Case
 from assess.case.spec import GradedConcrete, NamedTarget
 from assess.case.yamlfile import listed, nearest
@@ -40,6 +41,7 @@ def further_faults(case: Case) -> list[Fault]:
         case = _without_measuring(case)
     faults += _section_faults(case)
     faults += _target_faults(case)
+    faults += _event_faults(case)
     names = list(_grade_faults(case)) + list(_pooling_faults(case))
     faults += names or list(_prior_faults(case)) or _dependence_faults(case)  # in this order
     return sorted(set(faults))
@@ -173,6 +175,31 @@ def _dependence_faults(case: Case) -> list[Fault]:
         else:
             pairs.append(pair)
     return [*faults, *matrix_faults(document, pairs, marginals)]
+
+
+def _event_faults(case: Case) -> Iterator[Fault]:
+    """Find events at sections that do not exist, or at times that cannot be."""
+    sections, structure = case.spec.sections(), case.spec.structure
+    built, assessed = structure.built.year, structure.assessed
+    for index, event in enumerate(case.spec.events):
+        keys = ("events", index)
+        if event.section not in sections:
+            what, near = "there is no section of this name", nearest(event.section, sections)
+            yield case.document.fault(
+                (*keys, "section"), what, given=event.section, allowed=listed(sections), mend=near
+            )
+        if isinstance(event, LoadTest):
+            spans = [("year", event.year, built, assessed)]
+        else:
+            spans = [
+                ("from", event.from_year, built, assessed - 1),
+                ("to", event.to_year, max(built, event.from_year), assessed - 1),
+            ]
+        for key, year, low, high in spans:
+            if not low <= year <= high:
+                what = "the year is before construction, after the assessment or out of order"
+                allowed = f"{low} to {high}"
+                yield case.document.fault((*keys, key), what, given=str(year), allowed=allowed)
 
 
 def _target_faults(case: Case) -> Iterator[Fault]:

@@ -19,7 +19,13 @@ from assess.decisions.results import (
     SectionResult,
     Target,
 )
-from assess.decisions.sections import Question, gather, stage_results, used_variables
+from assess.decisions.sections import (
+    Question,
+    gather,
+    pasts_of,
+    stage_results,
+    used_variables,
+)
 from assess.decisions.targets import target, user_target
 from assess.errors import CaseError, NotConvergedError
 from assess.input_checks import further_faults
@@ -28,7 +34,14 @@ from assess.reliability.section import Precision
 from assess.updating.checks import data_sets
 from assess.updating.model import Spec, specify
 from assess.updating.sampling import Settings
-from assess.updating.stages import StageDraws, posterior_draws, prior_draws, stage_list
+from assess.updating.stages import (
+    EVENTS,
+    StageDraws,
+    posterior_draws,
+    prior_draws,
+    reweighted,
+    stage_list,
+)
 from assess.vocabulary import vocabulary
 
 Observer = Callable[[str, float], None]  # what is being done, share done (0 to 1)
@@ -188,9 +201,8 @@ def _sample_and_integrate(
 
         def take(draws: StageDraws) -> None:
             stages.append(draws)
-            futures.extend(
-                stage_results(case, spec, draws, question, executor, final=draws.number == last)
-            )
+            final = draws.number == last and not case.spec.events
+            futures.extend(stage_results(case, spec, draws, question, executor, final=final))
 
         with clock.measure("sampling"):
             kept = store.read_draws(options.out / store.DRAWS, key, used)
@@ -198,7 +210,8 @@ def _sample_and_integrate(
                 observe("reading back the draws of the earlier run", 0.0)
                 _require_converged(kept[0], accept=options.accept_unconverged)
                 for draws in kept[0]:
-                    take(draws)
+                    if draws.number <= last:  # events are looked at anew
+                        take(draws)
                 sampler = kept[1]
             else:
                 take(prior_draws(spec, settings, used))
@@ -215,6 +228,14 @@ def _sample_and_integrate(
                 if last:
                     sampler = _sampler_name()
         with clock.measure("reliability"):
+            if case.spec.events:
+                observe("weighing what has happened", 0.0)
+                pasts, weight = pasts_of(case, spec, stages[-1], question, executor)
+                stages.append(reweighted(stages[-1], weight, EVENTS, settings.seed))
+                named = replace(stages[last], name=EVENTS)
+                futures.extend(
+                    stage_results(case, spec, named, question, executor, final=True, pasts=pasts)
+                )
             results = []
             for done, future in enumerate(futures):
                 observe("integrating the sections", done / len(futures))

@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 
+from assess.case.events import Event, LoadTest
 from assess.case.reader import Case
 from assess.decisions.economics import option_results
 from assess.decisions.results import (
@@ -74,7 +75,7 @@ def run_record(
         discount_rate=None if costs is None else costs.discount_rate,
         failure_cost=None if costs is None else costs.failure,
         provenance=Provenance("", "", 0, {}, {}, {}, ""),
-        power_scaling=power_scaling(stages[-1], spec.prior, used_variables(case)),
+        power_scaling=power_scaling(stages[len(case.stages)], spec.prior, used_variables(case)),
     )
 
 
@@ -93,6 +94,7 @@ def _stage_record(draws: StageDraws) -> StageRecord:
         draws.retried,
         found.passed,
         found.failures,
+        draws.note,
     )
 
 
@@ -151,8 +153,23 @@ def _assumptions(case: Case) -> list[str]:
         said.append(f"Dependence stated before the surveys: {pairs}.")
     else:
         said.append("No dependence between common variables was stated before the surveys.")
+    for event in case.spec.events:
+        said.append(_event_words(event))
     kinds = dict.fromkeys(item.kind for item in case.evidence)
     said += [KINDS[kind].assumption for kind in kinds]
     for entry in case.spec.sections().values():
         said += LIMIT_STATES[entry.limit_state].assumptions(entry, case.spec)
     return list(dict.fromkeys(said))
+
+
+def _event_words(event: Event) -> str:
+    if isinstance(event, LoadTest):
+        return (
+            f"{event.section} carried a load effect of {event.effect / 1e6:g} kN·m in {event.year} "
+            f"(V {event.error:g}; {event.source})."
+        )
+    lighter = "" if event.load_factor == 1.0 else f" scaled by {event.load_factor:g}"
+    return (
+        f"{event.section} served from {event.from_year} to {event.to_year} without failure under "
+        f"its yearly maxima{lighter} ({event.source})."
+    )

@@ -20,6 +20,7 @@ from pydantic import (
 )
 
 from assess.case.distributions import LengthDistribution, NumberDistribution
+from assess.case.events import Event
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
 from assess.case.load_models import AnyLoadModel
 from assess.case.processes import (
@@ -373,6 +374,9 @@ class CaseSpec(Closed):
     )
     surveys: tuple[Survey, ...] = Field((), description="visits with their measurements")
     members: tuple[Member, ...] = Field(min_length=1, description="members to check")
+    events: tuple[Event, ...] = Field(
+        (), description="load tests survived and years served; they count after the last survey"
+    )
     dependence: tuple[Dependence, ...] = Field((), description="dependence in the prior")
     pooling: tuple[Pooling, ...] = Field((), description="zones that are alike to a degree")
     priors: dict[Text, dict[str, Any]] = Field(

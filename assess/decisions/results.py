@@ -132,6 +132,7 @@ class StageRecord:
     retried: bool
     passed: bool
     failures: Sequence[str]
+    note: str = ""  # how its draws came about, where not by chains of their own
 
 
 @dataclass(frozen=True, slots=True)

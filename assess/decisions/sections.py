@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from assess.case.events import Event
 from assess.case.forms import SectionEntry
 from assess.case.reader import Case
 from assess.decisions.options import LEAVE, OPTIONS
@@ -24,6 +25,7 @@ from assess.reliability.problem import (
     without_dependence,
 )
 from assess.reliability.section import (
+    Past,
     Precision,
     SectionReliability,
     load_factor,
@@ -85,6 +87,7 @@ def stage_results(
     executor: Executor,
     *,
     final: bool,
+    pasts: Mapping[str, Past] | None = None,
 ) -> list[Future[list[SectionResult]]]:
     """Set all sections of a stage to work; each future gives one section's results.
 
@@ -100,6 +103,8 @@ def stage_results(
         Runs the sections; numbers do not depend on how many run at a time.
     final : bool
         Whether this is the last stage, for which options are computed too.
+    pasts : mapping of str to Past, optional
+        What has happened, by section, from `pasts_of`.
 
     Returns
     -------
@@ -108,7 +113,17 @@ def stage_results(
     """
     values = draws.values()
     return [
-        executor.submit(_section, case, spec, entry, draws, values, question, final=final)
+        executor.submit(
+            _section,
+            case,
+            spec,
+            entry,
+            draws,
+            values,
+            question,
+            final=final,
+            past=(pasts or {}).get(entry.name),
+        )
         for entry in case.spec.sections().values()
     ]
 
@@ -122,17 +137,20 @@ def _section(
     question: Question,
     *,
     final: bool,
+    past: Past | None = None,
 ) -> list[SectionResult]:
     """Give results of one section: `leave`, then at the last stage each option."""
     state = section_state(case, spec, entry, draws.number, values)
-    left = _reliability(case, state, Action(), question)
+    left = _reliability(case, state, Action(), question, past=past)
     results = [_result(case, state, draws.name, LEAVE, left, question)]
-    dropped = _reliability(case, without_dependence(state, question.seed), Action(), question)
-    results[0] = replace(
-        results[0],
-        independent=dropped.reference,
-        verdict_independent=_judge(dropped, question, results[0].verdict.governing),
-    )
+    if past is None:  # a past ties the draws together: there is no dropping that
+        torn = without_dependence(state, question.seed)
+        dropped = _reliability(case, torn, Action(), question)
+        results[0] = replace(
+            results[0],
+            independent=dropped.reference,
+            verdict_independent=_judge(dropped, question, results[0].verdict.governing),
+        )
     if final:
         for name, action in actions(case, entry.name).items():
             if action is None:  # the option leaves this member as it is
@@ -147,7 +165,7 @@ def _section(
                 )
                 continue
             # On the same points: what differs between options is then not noise.
-            found = _reliability(case, state, action, question, left.proposal)
+            found = _reliability(case, state, action, question, left.proposal, past)
             results.append(_result(case, state, draws.name, name, found, question))
     return results
 
@@ -158,10 +176,64 @@ def _reliability(
     action: Action,
     question: Question,
     proposal: Proposal | None = None,
+    past: Past | None = None,
 ) -> SectionReliability:
     return section_reliability(
-        case, state, action, question.target.period, question.precision, proposal
+        case, state, action, question.target.period, question.precision, proposal, past
     )
+
+
+def pasts_of(
+    case: Case, spec: Spec, draws: StageDraws, question: Question, executor: Executor
+) -> tuple[dict[str, Past], FloatArray]:
+    """Work out what the events of all sections say of the draws.
+
+    Parameters
+    ----------
+    case, spec : Case, Spec
+        The case, with events, and its measurements.
+    draws : StageDraws
+        Last state of knowledge before the events count.
+    question : Question
+        Target, precision, seed.
+    executor : Executor
+        Runs the sections.
+
+    Returns
+    -------
+    pasts : dict of str to Past
+        For each section its own events, and the weight that those of the others give each draw.
+    weight : ndarray, shape (n_draw,)
+        Weight of each draw by all events, mean 1.
+
+    Notes
+    -----
+    Given a draw the local variables of different sections are independent, so that a draw's
+    weight is the product over sections of the probability of their past given the draw. A
+    section's own past enters its integral point by point, not as a weight.
+    """
+    values = draws.values()
+    own: dict[str, tuple[Event, ...]] = {}
+    for event in case.spec.events:
+        own[event.section] = (*own.get(event.section, ()), event)
+    entries = case.spec.sections()
+
+    def survived(name: str) -> FloatArray:
+        state = section_state(case, spec, entries[name], draws.number, values)
+        found = _reliability(case, state, Action(), question, past=Past(own[name]))
+        return found.draw_weight
+
+    weights = dict(zip(own, executor.map(survived, own), strict=True))
+    whole = np.prod(list(weights.values()), axis=0)
+    pasts = {
+        name: Past(
+            own.get(name, ()),
+            np.prod([w for other, w in weights.items() if other != name], axis=0)
+            * np.ones_like(whole),
+        )
+        for name in entries
+    }
+    return pasts, whole / whole.mean()
 
 
 def _result(
@@ -197,7 +269,9 @@ def _judge(found: SectionReliability, question: Question, governing: str) -> Ver
     """Judge integrated curves, with the load factor that would meet the target now."""
     allowed = float(probability_from_index(question.target.index))
     factor = load_factor(found, allowed, question.target.period)
-    return verdict(found.reference, found.conditional, question.target, factor, governing)
+    return verdict(
+        found.reference, found.conditional, question.target, factor, governing, found.draw_weight
+    )
 
 
 def _note(found: SectionReliability, tolerance: float) -> str:

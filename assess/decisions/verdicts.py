@@ -13,7 +13,10 @@ LEAST_LOAD_FACTOR = 0.1  # below it a load limit is a closure and is not offered
 
 
 def crossing(
-    curve: IndexCurve, conditional: FloatArray, target: Target
+    curve: IndexCurve,
+    conditional: FloatArray,
+    target: Target,
+    draw_weight: FloatArray | None = None,
 ) -> tuple[int | None, int | None, int | None]:
     """Year in which the target is first missed, with its interval over the draws.
 
@@ -25,6 +28,8 @@ def crossing(
         Failure probability given each draw, for the same windows.
     target : Target
         Required index.
+    draw_weight : ndarray, shape (n_draw,), optional
+        Weights of draws that are not alike.
 
     Returns
     -------
@@ -38,7 +43,7 @@ def crossing(
     missed = conditional > allowed
     never = len(curve.year)
     first = np.where(missed.any(axis=1), missed.argmax(axis=1), never)
-    low, high = np.quantile(first, INTERVAL, method="inverted_cdf").astype(int)
+    low, high = np.quantile(first, INTERVAL, method="inverted_cdf", weights=draw_weight).astype(int)
     return (
         year,
         int(curve.year[low]) if low < never else None,
@@ -52,6 +57,7 @@ def verdict(
     target: Target,
     load_factor: float | None,
     governing: str,
+    draw_weight: FloatArray | None = None,
 ) -> Verdict:
     """Judge a section against its target.
 
@@ -63,13 +69,15 @@ def verdict(
         Factor on the variable load that just meets the target now.
     governing : str
         Group of variables that failure comes from, in words.
+    draw_weight : ndarray, shape (n_draw,), optional
+        Weights of draws that are not alike.
 
     Returns
     -------
     Verdict
         One of the four standings, with the crossing year and its interval.
     """
-    year, low, high = crossing(curve, conditional, target)
+    year, low, high = crossing(curve, conditional, target, draw_weight)
     if year is None:
         standing = Standing.MEETS
     elif curve.index[0] >= target.index:
@@ -84,7 +92,7 @@ def verdict(
         year,
         low,
         high,
-        float(np.mean(conditional[:, -1] > allowed)),
+        float(np.average(conditional[:, -1] > allowed, weights=draw_weight)),
         load_factor,
         governing,
     )

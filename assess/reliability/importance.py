@@ -51,6 +51,16 @@ class Problem:
     years: int
     load_ratio: FloatArray = field(default_factory=lambda: np.zeros(0))  # mode over scale, a year
     features: FloatArray | None = None  # (n_draw, k) what makes draws alike, scaled alike
+    # (z (n, k, dimension), the n draws) -> ln P(what happened | draw, z), (n, k); None: nothing
+    log_survival: Callable[[FloatArray, IntArray], FloatArray] | None = None
+    draw_weight: FloatArray | None = None  # (n_draw,) of draws that are not alike; None: alike
+
+    @property
+    def weights(self) -> FloatArray:
+        """Weight of each draw, mean 1."""
+        if self.draw_weight is None:
+            return np.ones(self.draws)
+        return self.draw_weight * (self.draws / self.draw_weight.sum())
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -87,6 +97,10 @@ class Sample:
         Adds up to 1 in each replicate in expectation, and to 1/n_draw over each draw.
     hazard : ndarray, shape (n_replicate, n_centre, n_point, n_year)
         Lambda of each year.
+    survival : ndarray, shape (n_replicate, n_centre, n_point)
+        Probability of what has happened to the section so far; 1 where nothing counts.
+    draw_weight : ndarray, shape (n_draw,)
+        Weight of each draw before the section's own past, mean 1.
     draws : int
         Number of draws.
     evaluations : int
@@ -97,8 +111,23 @@ class Sample:
     z: FloatArray
     weight: FloatArray
     hazard: FloatArray
+    survival: FloatArray
+    draw_weight: FloatArray
     draws: int
     evaluations: int
+
+    def given_past(self) -> FloatArray:
+        """Weights given what has happened, adding up to 1 in each replicate in the mean.
+
+        Returns
+        -------
+        ndarray, shape of ``weight``
+        """
+        whole = self.weight * self.draw_weight[self.owner]
+        if np.all(self.survival == 1.0):
+            return np.asarray(whole)
+        whole = whole * self.survival
+        return np.asarray(whole * (len(whole) / whole.sum()))
 
     def per_draw(self, value: FloatArray) -> FloatArray:
         """Sum a value over the points of each draw and over the centres.
@@ -184,6 +213,8 @@ def find_modes(problem: Problem, year: int, starts: Sequence[FloatArray] = ()) -
         spent += z.shape[0] * z.shape[1]
         return problem.log_hazard(z, chosen, years)[..., 0]
 
+    # Modes are those before the past counts: a past without failure moves them little, and a
+    # proposal need not be exact.
     pilot, rest, nearest = _pilot(problem)
     scouts = _scouts(problem.dimension)
     seen = _look_around(log_hazard, scouts, pilot)
@@ -402,7 +433,14 @@ def draw_sample(problem: Problem, proposal: Proposal, replicates: int) -> Sample
                 )[:, 0]
                 # Beyond e^50 failure is certain; the bound keeps sums over years finite.
                 hazard[replicate, number, part] = np.exp(np.minimum(log_hazard, 50.0))
-    return Sample(owner, z, weight, hazard, problem.draws, hazard.size)
+    survival = np.ones_like(weight)
+    if problem.log_survival is not None:
+        for replicate in range(replicates):
+            for number in range(count):
+                survival[replicate, number] = np.exp(
+                    problem.log_survival(z[replicate, number, :, None], owner)[:, 0]
+                )
+    return Sample(owner, z, weight, hazard, survival, problem.weights, problem.draws, hazard.size)
 
 
 @lru_cache(maxsize=2)

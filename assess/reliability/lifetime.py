@@ -30,17 +30,20 @@ class Probabilities:
     Attributes
     ----------
     probability : ndarray
-        All uncertainty integrated.
+        All uncertainty integrated; given what has happened, where the problem says so.
     integration_error, mcmc_error : ndarray
         Standard errors of the *index*.
     conditional : ndarray, shape (n_draw, n_window)
         Probability given the draw.
+    draw_weight : ndarray, shape (n_draw,)
+        Weight of each draw given what has happened, mean 1.
     """
 
     probability: FloatArray
     integration_error: FloatArray
     mcmc_error: FloatArray
     conditional: FloatArray
+    draw_weight: FloatArray
 
     @property
     def index(self) -> FloatArray:
@@ -51,7 +54,10 @@ class Probabilities:
         """Quantile over the draws of the index given the draw, shape (n_window,)."""
         # Weights average to 1 only in the mean, so a near certain failure may come out above 1.
         bounded = np.minimum(self.conditional, 1.0)
-        return np.asarray(index_from_probability(np.quantile(bounded, 1.0 - share, axis=0)))
+        quantile = np.quantile(
+            bounded, 1.0 - share, axis=0, method="inverted_cdf", weights=self.draw_weight
+        )
+        return np.asarray(index_from_probability(quantile))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -91,9 +97,11 @@ def probabilities(
 
     Notes
     -----
-    The integration error comes from the scatter between independently scrambled replicates,
-    the error of finite chains from non-overlapping batch means of the conditional probability
-    [1]_, less the integration noise that they contain.
+    With S the probability of what has happened, and W the weight of a draw,
+    P = E[W S (1 - exp(-sum Lambda))] / E[W S], both on the same points. The integration error
+    comes from the scatter between independently scrambled replicates, the error of finite chains
+    from non-overlapping batch means of the ratio's linear form in the draws [1]_, less the
+    integration noise that they contain.
 
     References
     ----------
@@ -101,8 +109,10 @@ def probabilities(
        chain Monte Carlo, Ann. Statist. 38 (2010) 1034-1070, doi:10.1214/09-AOS735.
     """
     replicates = len(sample.weight)
-    by_replicate = np.empty((replicates, sample.draws, len(first)))
+    failed = np.empty((replicates, sample.draws, len(first)))
+    survived = np.ones((replicates, sample.draws))
     annual = bool(np.array_equal(first, last))
+    past = bool(np.any(sample.survival != 1.0))
     for replicate in range(replicates):
         hazard = sample.hazard[replicate]
         if annual:
@@ -111,20 +121,26 @@ def probabilities(
             start = np.zeros((*hazard.shape[:-1], 1))
             total = np.concatenate([start, np.cumsum(hazard, axis=-1)], axis=-1)
             within = total[..., last + 1] - total[..., first]
-        failing = -np.expm1(-within) * sample.weight[replicate, ..., None]
-        by_replicate[replicate] = sample.draws * sample.per_draw(failing)
-    conditional = by_replicate.mean(axis=0)
-    probability = conditional.mean(axis=0)
-    means = by_replicate.mean(axis=1)
+        weight = sample.weight[replicate] * sample.survival[replicate]
+        failed[replicate] = sample.draws * sample.per_draw(-np.expm1(-within) * weight[..., None])
+        if past:
+            survived[replicate] = sample.draws * sample.per_draw(weight)
+    outer = sample.draw_weight
+    means = np.einsum("d,rdw->rw", outer, failed) / (survived @ outer)[:, None]
+    top, bottom = failed.mean(axis=0), survived.mean(axis=0)
+    scale = float(bottom @ outer) / sample.draws
+    probability = np.asarray((outer @ top) / sample.draws / scale)
     integration = means.std(axis=0, ddof=1) / np.sqrt(replicates)
-    total = batch_means_error(conditional, chains)
-    mcmc = np.sqrt(np.maximum(total**2 - integration**2, 0.0))
+    linear = outer[:, None] * (top - probability * bottom[:, None]) / scale
+    total_error = batch_means_error(linear, chains)
+    mcmc = np.sqrt(np.maximum(total_error**2 - integration**2, 0.0))
     index = index_from_probability(np.minimum(probability, 1.0))
     return Probabilities(
         probability,
         np.asarray(index_error(index, integration)),
         np.asarray(index_error(index, mcmc)),
-        conditional,
+        top / np.maximum(bottom, 1e-300)[:, None],
+        outer * bottom / scale,
     )
 
 
@@ -199,7 +215,9 @@ def integrate(
         if worst <= tolerance or elements > MOST_ELEMENTS:
             return Integral(sample, annual, proposal, spent)
         proposal = Proposal(
-            proposal.centres, allocate(annual.conditional, points), proposal.seed + 1
+            proposal.centres,
+            allocate(annual.conditional * annual.draw_weight[:, None], points),
+            proposal.seed + 1,
         )
 
 

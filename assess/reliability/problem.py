@@ -1,11 +1,13 @@
 """From draws and a section of the case to the integral's problem."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import special
 
+from assess.case.events import Event, LoadTest
 from assess.case.forms import SectionEntry
 from assess.case.reader import Case
 from assess.case.spec import CaseSpec
@@ -150,7 +152,13 @@ def calendar_years(case: Case) -> NDArray[np.int64]:
     return case.spec.structure.assessed + np.arange(case.spec.structure.horizon)
 
 
-def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
+def build_problem(
+    case: Case,
+    state: SectionState,
+    action: Action,
+    events: Sequence[Event] = (),
+    draw_weight: FloatArray | None = None,
+) -> Problem:
     """Put a section under an option as the integral sees it.
 
     Parameters
@@ -161,6 +169,10 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
         The section in one state of knowledge.
     action : Action
         What the option does to it.
+    events : sequence of Event
+        What has happened to this very section.
+    draw_weight : ndarray, shape (n_draw,), optional
+        Weights of the draws by what has happened to other sections.
 
     Returns
     -------
@@ -187,8 +199,53 @@ def build_problem(case: Case, state: SectionState, action: Action) -> Problem:
         return np.asarray((mode[years] - capacity) / scale[years])
 
     return Problem(
-        log_hazard, len(names), state.draws, len(age), mode / scale, _features(state.common)
+        log_hazard,
+        len(names),
+        state.draws,
+        len(age),
+        mode / scale,
+        _features(state.common),
+        _log_survival(case, state, names, events) if events else None,
+        draw_weight,
     )
+
+
+def _log_survival(
+    case: Case, state: SectionState, names: Sequence[str], events: Sequence[Event]
+) -> Callable[[FloatArray, IntArray], FloatArray]:
+    r"""Give the log-probability of what has happened, for chosen draws and points.
+
+    Notes
+    -----
+    A load test is survived where the load capacity q of its year exceeds the effect Q, known up
+    to a lognormal error of standard deviation s: :math:`\ln \Phi(\ln(q/Q)/s)`. Years served
+    without failure have the probability :math:`\prod_y F_y(q_y)`, as those to come.
+    """
+    limit_state: LimitState = LIMIT_STATES[state.entry.limit_state]
+    structure = case.spec.structure
+
+    def capacity(z: FloatArray, draws: IntArray, years: FloatArray) -> FloatArray:
+        age = years - structure.assessed + ages(case)[0]
+        here = _surroundings(state, names, z, draws, age, Action())
+        return limit_state.load_capacity(state.entry, case.spec, here)
+
+    def log_survival(z: FloatArray, draws: IntArray) -> FloatArray:
+        total = np.zeros(z.shape[:2])
+        for event in events:
+            if isinstance(event, LoadTest):
+                carried = capacity(z, draws, np.array([float(event.year)]))[..., 0]
+                spread = np.sqrt(np.log1p(event.error**2))
+                ratio = np.log(np.maximum(carried, 1e-300) / event.effect) / spread
+                total += special.log_ndtr(np.maximum(ratio, -37.0))
+                continue
+            years = np.arange(event.from_year, event.to_year + 1.0)
+            maximum = limit_state.annual_maximum(state.entry, case.spec, years)
+            mode, scale = maximum.mode * event.load_factor, maximum.scale * event.load_factor
+            hazard = np.exp(np.minimum((mode - capacity(z, draws, years)) / scale, 50.0))
+            total -= np.minimum(hazard.sum(axis=-1), 700.0)
+        return total
+
+    return log_survival
 
 
 def _features(common: Mapping[str, FloatArray]) -> FloatArray | None:

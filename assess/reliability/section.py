@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from assess.case.events import Event
 from assess.case.reader import Case
 from assess.reliability.importance import Proposal, Sample
 from assess.reliability.lifetime import Probabilities, integrate, probabilities, windows
@@ -49,6 +50,7 @@ class SectionReliability:
     cumulative: IndexCurve
     reference: IndexCurve
     conditional: FloatArray  # probability given the draw, (n_draw, n_reference)
+    draw_weight: FloatArray  # weight of each draw given the section's past, mean 1
     sample: Sample
     load_ratio: FloatArray  # mode over scale of each year's load, (n_year,)
     proposal: Proposal
@@ -64,6 +66,14 @@ class Precision:
     seed: int
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Past:
+    """What has happened to a section, and what that of others says of each draw."""
+
+    events: tuple[Event, ...] = ()
+    draw_weight: FloatArray | None = None  # (n_draw,)
+
+
 def section_reliability(
     case: Case,
     state: SectionState,
@@ -71,6 +81,7 @@ def section_reliability(
     period: int,
     precision: Precision,
     proposal: Proposal | None = None,
+    past: Past | None = None,
 ) -> SectionReliability:
     """Integrate one section under one option.
 
@@ -88,13 +99,16 @@ def section_reliability(
         Tolerance and seed.
     proposal : Proposal, optional
         Of the same section under another option, for common random numbers.
+    past : Past, optional
+        What has happened to this section and to others.
 
     Returns
     -------
     SectionReliability
         Yearly, cumulative and for every window of the reference period.
     """
-    problem = build_problem(case, state, action)
+    past = past or Past()
+    problem = build_problem(case, state, action, past.events, past.draw_weight)
     found = integrate(
         problem,
         chains=precision.chains,
@@ -116,6 +130,7 @@ def section_reliability(
         _curve(cumulative, years, last + 1),
         _curve(reference, years[until], np.full(len(until), period)),
         reference.conditional,
+        reference.draw_weight,
         sample,
         problem.load_ratio,
         found.proposal,
@@ -166,13 +181,14 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
     sample serves all factors (common random numbers); bisection on ln f.
     """
     sample = found.sample
+    weight = sample.given_past()
     hazard = np.maximum(sample.hazard[..., :period], 1e-300)
     ratio = found.load_ratio[:period]
     spare = ratio - np.log(hazard)
 
     def probability(log_factor: float) -> float:
         scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 50.0)).sum(axis=-1)
-        return float(np.sum(sample.weight * -np.expm1(-scaled)) / len(sample.weight))
+        return float(np.sum(weight * -np.expm1(-scaled)) / len(weight))
 
     low, high = np.log(0.02), np.log(5.0)
     if probability(low) > target_probability or probability(high) < target_probability:

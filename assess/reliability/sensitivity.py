@@ -55,7 +55,7 @@ def sensitivity_factors(state: SectionState, sample: Sample, year: int) -> dict[
     ----------
     .. [1] O. Ditlevsen, H. O. Madsen, Structural Reliability Methods, 1996, chapters 5 and 8.
     """
-    failing = sample.weight * -np.expm1(-sample.hazard[..., year])
+    failing = sample.given_past() * -np.expm1(-sample.hazard[..., year])
     total = failing.sum()
     shares: dict[str, float] = {}
 

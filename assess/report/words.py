@@ -164,6 +164,8 @@ def stage_diagnosis(record: RunRecord, stage: StageRecord) -> str:
     name = stage_words(record, stage.name)
     name = name[0].upper() + name[1:]
     whole = numbers.count(stage.chains * stage.draws, "draw")
+    if stage.note:
+        return f"{name}: {stage.note}."
     if not np.isfinite(stage.rhat_max):
         return f"{name}: {whole}, made directly from the prior; no Markov chain is involved."
     size = (

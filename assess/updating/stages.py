@@ -20,6 +20,7 @@ from assess.updating.sampling import (
 
 FloatArray = NDArray[np.float64]
 PRIOR = "prior"
+EVENTS = "after events"  # load tests survived, years served
 StageProgress = Callable[[str, float], None]  # what is being done, share done
 
 
@@ -37,6 +38,7 @@ class StageDraws:
     divergences: int
     retried: bool
     diagnostics: Diagnostics
+    note: str = ""  # how the draws came about, where it was not by a chain of their own
 
     @property
     def chains(self) -> int:
@@ -147,6 +149,55 @@ def posterior_draws(
         if not draws.diagnostics.passed and not accept_unconverged:
             raise NotConvergedError(name, list(draws.diagnostics.failures))
         yield draws
+
+
+def reweighted(draws: StageDraws, weight: FloatArray, name: str, seed: int) -> StageDraws:
+    r"""Take draws by their weights: the state of knowledge after what the weights stand for.
+
+    Parameters
+    ----------
+    draws : StageDraws
+        Of the state before.
+    weight : ndarray, shape (chain * draw,)
+        Non-negative.
+    name : str
+        Of the new state.
+    seed : int
+        Of the resampling.
+
+    Returns
+    -------
+    StageDraws
+        As many draws, some of them several times.
+
+    Notes
+    -----
+    Systematic resampling keeps the number of copies of a draw within one of its expectation;
+    the effective number of draws is :math:`(\sum w)^2 / \sum w^2` [1]_.
+
+    References
+    ----------
+    .. [1] J. S. Liu, Monte Carlo Strategies in Scientific Computing, Springer 2001, section 2.5.
+    """
+    count = len(weight)
+    edges = np.cumsum(weight / weight.sum())
+    start = np.random.default_rng([seed, draws.number, 5]).uniform()
+    chosen = np.minimum(np.searchsorted(edges, (start + np.arange(count)) / count), count - 1)
+    shape = draws.physical.shape
+
+    def take(values: FloatArray) -> FloatArray:
+        return values.reshape(count, -1)[chosen].reshape(values.shape)
+
+    effective = weight.sum() ** 2 / (weight**2).sum()
+    return replace(
+        draws,
+        name=name,
+        number=draws.number + 1,
+        whitened=take(draws.whitened),
+        physical=take(draws.physical).reshape(shape),
+        log_likelihood=take(draws.log_likelihood),
+        note=f"the draws before, weighted by what has happened; {effective:.0f} of {count} count",
+    )
 
 
 def _sample_once(
