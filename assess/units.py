@@ -24,6 +24,7 @@ CUSTOMARY: dict[str, tuple[str, ...]] = {
     "N*mm": ("kN*m", "MN*m", "N*mm", "kip*ft", "lbf*ft"),
     "µA/cm^2": ("µA/cm^2", "uA/cm^2", "mA/m^2"),
     "yr": ("yr", "month", "week", "day"),
+    "g/mm": ("g/mm", "kg/m", "lb/ft"),
     "mm^2/yr": ("mm^2/yr", "m^2/s", "cm^2/s"),
     "mm/yr^0.5": ("mm/yr^0.5", "cm/yr^0.5", "in/yr^0.5"),
     NONE: ("-", "%"),

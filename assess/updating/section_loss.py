@@ -1,6 +1,7 @@
 """Evidence: loss of bar diameter measured at break-outs, and break-outs without loss."""
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from typing import Any, cast
 
 import numpy as np
@@ -16,6 +17,7 @@ from assess.updating.corrosion_history import Places, Population
 from assess.updating.kind import (
     EvidenceKind,
     FloatArray,
+    IntArray,
     Numeric,
     Rows,
     build_rows,
@@ -25,14 +27,16 @@ from assess.updating.kind import (
 )
 from assess.updating.local import LocalModel
 from assess.updating.local_corrosion import measured_corrosion
-from assess.updating.loss_faults import healed_place
+from assess.updating.loss_faults import healed_place, impossible_losses
+from assess.updating.loss_readings import LossReadings, loss_readings
 
 
 def _loss_of_diameter(entry: EvidenceEntry, table: Table) -> FloatArray:
     """Loss of diameter that counts as found, NaN elsewhere [mm]."""
-    loss = table.numbers["original diameter"] - table.numbers["residual diameter"]
-    found = loss >= 2.0 * cast(SectionLossEntry, entry).detection_limit
-    return np.where(found, loss, np.nan)
+    read = _read(cast(SectionLossEntry, entry), table)
+    loss = np.full(len(table), np.nan)
+    loss[read.row[::-1]] = 2.0 * np.exp(read.log_loss[::-1])  # the even loss before the pit
+    return loss
 
 
 NONE_FOUND = ("none", "no loss", "none found", "no loss found")
@@ -48,6 +52,13 @@ class SectionLossEntry(EvidenceEntry):
     error: CoefficientOfVariation = Field(
         description="Coefficient of variation of a measured loss about the true mean loss."
     )
+    pit_length: Length = Field(
+        200.0, description="Length of bar over which the deepest pit was looked for. [mm]"
+    )
+
+
+def _read(entry: SectionLossEntry, table: Table) -> LossReadings:
+    return loss_readings(table, entry.detection_limit, entry.error, entry.pit_length)
 
 
 class SectionLoss(EvidenceKind):
@@ -80,10 +91,28 @@ class SectionLoss(EvidenceKind):
                 "residual diameter",
                 "mean diameter left after cleaning",
                 "mm",
+                required=False,
                 above=0.0,
                 below=100.0,
                 usual=(3.0, 50.0),
                 absent=NONE_FOUND,
+            ),
+            Column(
+                "residual mass",
+                "mass per length left after cleaning, in place of the diameter",
+                "g/mm",
+                required=False,
+                above=0.0,
+                below=100.0,
+            ),
+            Column(
+                "pit depth",
+                "depth of the deepest pit below the sound surface",
+                "mm",
+                required=False,
+                above=0.0,
+                below=50.0,
+                usual=(0.05, 25.0),
             ),
         ),
         value="residual diameter",
@@ -106,37 +135,37 @@ class SectionLoss(EvidenceKind):
             return None
         value: list[FloatArray] = []
         extra: dict[str, list[FloatArray]] = {"age": [], "limit": [], "precision": []}
+        taken: list[IntArray] = []
+        before = 0
         for _, item in items:
-            entry = cast(SectionLossEntry, item.entry)
-            numbers = item.table.numbers
-            loss = 0.5 * (numbers["original diameter"] - numbers["residual diameter"])
-            # A loss read below the detection limit says no more than "none found".
-            found = np.nan_to_num(loss, nan=0.0) >= entry.detection_limit
-            value.append(np.log(np.where(found, loss, np.nan)))
-            count = len(loss)
-            extra["age"].append(np.full(count, item.age))
-            extra["limit"].append(np.full(count, np.log(entry.detection_limit)))
-            extra["precision"].append(np.full(count, 1.0 / np.log1p(entry.error**2)))
-        return build_rows(items, value, extra)
+            read = _read(cast(SectionLossEntry, item.entry), item.table)
+            value.append(read.log_loss)
+            extra["age"].append(np.full(len(read.row), item.age))
+            extra["limit"].append(read.log_limit)
+            extra["precision"].append(1.0 / read.variance)
+            taken.append(before + read.row)
+            before += len(item.table)
+        # One entry a row first, for places and zones; then each reading takes those of its row.
+        count = [np.full(len(item.table), np.nan) for _, item in items]
+        rows = build_rows(items, count, {})
+        row = np.concatenate(taken)
+        return replace(
+            rows,
+            value=np.concatenate(value),
+            stage=rows.stage[row],
+            zone=rows.zone[row],
+            place=rows.place[row],
+            extra={
+                "row": row.astype(np.float64),
+                **{name: np.concatenate(parts) for name, parts in extra.items()},
+            },
+        )
 
     def faults(self, case: Case) -> Sequence[Fault]:
         """Find residual diameters above the original, and losses that have healed."""
         found: list[Fault] = []
         for _, item in gather(case, self.form.key):
-            numbers = item.table.numbers
-            grown = numbers["residual diameter"] > numbers["original diameter"]
-            found += [
-                Fault(
-                    str(item.table.path),
-                    int(item.table.lines[row]),
-                    "residual diameter exceeds the original one",
-                    f"{numbers['residual diameter'][row]:g} of "
-                    f"{numbers['original diameter'][row]:g} mm",
-                    "at most the original diameter",
-                    "write 'none' where no loss was found",
-                )
-                for row in np.flatnonzero(grown)
-            ]
+            found += impossible_losses(item.table)
             without = [z for z in dict.fromkeys(item.zone) if case.spec.zones[z].corrosion is None]
             found += [
                 Fault(
