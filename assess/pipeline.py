@@ -154,7 +154,7 @@ def run_case(path: Path, options: RunOptions, observe: Observer) -> RunRecord:
         observe("checking the fit", 0.0)
         sets = data_sets(case, spec, stages, settings.seed)
     record = replace(
-        run_record(case, spec, stages, results, sets, question.target),
+        run_record(case, spec, stages, results, sets, question.target, settings.seed),
         doubts=[str(doubt) for doubt in reading.doubts],
         accepted_unconverged=options.accept_unconverged
         and not all(draws.diagnostics.passed for draws in stages),

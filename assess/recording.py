@@ -17,6 +17,7 @@ from assess.decisions.results import (
 )
 from assess.decisions.sections import used_variables
 from assess.reliability.limit_states import LIMIT_STATES
+from assess.reliability.teaching import teachings
 from assess.updating.checks import DataSet, surprises
 from assess.updating.kinds import KINDS
 from assess.updating.model import Spec
@@ -31,6 +32,7 @@ def run_record(
     results: Sequence[SectionResult],
     sets: Sequence[DataSet],
     wanted: Target,
+    seed: int,
 ) -> RunRecord:
     """Assemble what was found.
 
@@ -46,6 +48,8 @@ def run_record(
         Checked data sets.
     wanted : Target
         What indices are held against.
+    seed : int
+        Of what is drawn for the ledger.
 
     Returns
     -------
@@ -76,6 +80,7 @@ def run_record(
         failure_cost=None if costs is None else costs.failure,
         provenance=Provenance("", "", 0, {}, {}, {}, ""),
         power_scaling=power_scaling(stages[len(case.stages)], spec.prior, used_variables(case)),
+        teaching=teachings(case, spec, stages[: len(case.stages) + 1], seed),
     )
 
 

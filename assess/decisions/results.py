@@ -8,6 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from assess.reliability.section import IndexCurve as IndexCurve
+from assess.reliability.teaching import Taught as Taught
+from assess.reliability.teaching import Teaching as Teaching
 from assess.updating.power_scaling import PowerScaling as PowerScaling
 
 FloatArray = NDArray[np.float64]
@@ -181,6 +183,7 @@ class RunRecord:
     provenance: Provenance
     accepted_unconverged: bool = False
     power_scaling: Sequence[PowerScaling] = ()  # after the last survey
+    teaching: Sequence[Teaching] = ()  # what was taught about each section
 
     def result(self, section: str, stage: str, option: str = "leave") -> SectionResult:
         """Find one section's result.

@@ -210,6 +210,16 @@ def build_problem(
     )
 
 
+def capacity_now(
+    case: Case, state: SectionState, z: FloatArray, draws: IntArray, action: Action
+) -> FloatArray:
+    """Load capacity in the first year, for chosen draws and points, (n, k)."""
+    limit_state: LimitState = LIMIT_STATES[state.entry.limit_state]
+    here = _surroundings(state, list(dimensions(state)), z, draws, ages(case)[:1], action)
+    capacity = limit_state.load_capacity(state.entry, case.spec, here)
+    return np.broadcast_to(capacity, (*z.shape[:2], 1))[..., 0]
+
+
 def _log_survival(
     case: Case, state: SectionState, names: Sequence[str], events: Sequence[Event]
 ) -> Callable[[FloatArray, IntArray], FloatArray]:

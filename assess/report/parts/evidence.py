@@ -4,7 +4,7 @@ from functools import partial
 
 import numpy as np
 
-from assess.decisions.results import DataRecord, FloatArray, RunRecord, VariableRecord
+from assess.decisions.results import DataRecord, FloatArray, RunRecord, Taught, VariableRecord
 from assess.report import derived, figures, findings, numbers, words
 from assess.report.document import (
     Block,
@@ -76,12 +76,44 @@ def learning(record: RunRecord) -> Section:
     sentence = findings.learned_sentence(record)
     if sentence:
         blocks.append(Paragraph([sentence]))
+    if record.teaching:
+        blocks.append(_teaching_table(record))
     blocks.append(_variables_table(record))
     blocks.append(_density_figure(record))
     predictive = [item for item in record.data if item.predictive and len(item.values)]
     if predictive:
         blocks.append(_predictive_figure(record, predictive))
     return Section("What the surveys taught", [item for item in blocks if item is not None])
+
+
+def _teaching_table(record: RunRecord) -> Table:
+    first = record.teaching[0]
+    columns = [
+        Column("Section"),
+        *(Column(f"Survey: {item.by}", right=True) for item in first.surveys),
+        *(Column(f"All {item.by.lower()}", right=True) for item in first.kinds),
+    ]
+    rows = [
+        [text_cell(item.section), *(_taught_cell(one) for one in (*item.surveys, *item.kinds))]
+        for item in record.teaching
+    ]
+    notes = [
+        "Of this year\u2019s load capacity of the section, local values included: share of its "
+        "variance that was explained, and information gained in nats (the Kullback-Leibler "
+        "divergence of the state after from that before). A survey is held against the state "
+        "before it; a kind of evidence against the last state without it, by reweighting its "
+        "draws. Negative: what was found made the capacity less certain than had been thought. "
+        "\u201cMuch\u201d: so much that reweighting cannot tell."
+    ]
+    return Table("What was learned about each section", columns, rows, notes)
+
+
+def _taught_cell(found: Taught) -> Cell:
+    if found.variance_explained is None or found.nats is None:
+        return text_cell("much")
+    return text_cell(
+        f"{numbers.percent(found.variance_explained)}; {numbers.fixed(found.nats, 2)} nats"
+    )
 
 
 def _stages_of(record: RunRecord, variable: VariableRecord) -> list[str]:
