@@ -69,7 +69,7 @@ def run_record(
         target=wanted,
         stages=[_stage_record(draws) for draws in stages],
         variables=_variable_records(case, spec, stages),
-        data=[_data_record(item, stages) for item in sets],
+        data=[_data_record(case, item, stages) for item in sets],
         results=results,
         options=option_results(case, results, names[-1]),
         doubts=(),
@@ -120,7 +120,7 @@ def _variable_records(case: Case, spec: Spec, stages: Sequence[StageDraws]) -> l
     ]
 
 
-def _data_record(item: DataSet, stages: Sequence[StageDraws]) -> DataRecord:
+def _data_record(case: Case, item: DataSet, stages: Sequence[StageDraws]) -> DataRecord:
     stage = stages[item.stage]
     absent = any(column.absent for column in item.kind.form.columns)
     return DataRecord(
@@ -136,10 +136,21 @@ def _data_record(item: DataSet, stages: Sequence[StageDraws]) -> DataRecord:
         censored=0 if absent else item.missing,
         absent=item.missing if absent else 0,
         sections=item.sections,
-        path="",
+        path=", ".join(_files(case, item, stage.name)),
         variable=f"{item.zone}.{item.kind.carrier}",
         predictive=item.predictive,
         p_values=item.p_values,
+    )
+
+
+def _files(case: Case, item: DataSet, survey: str) -> list[str]:
+    """Name the tables that a data set came from."""
+    return list(
+        dict.fromkeys(
+            one.table.path.name
+            for one in case.evidence
+            if one.kind == item.kind.form.key and one.survey == survey and item.zone in one.zone
+        )
     )
 
 

@@ -211,6 +211,15 @@ def test_dependence_is_that_of_the_case_and_then_of_the_data(run: Run) -> None:
     assert after > 0.1
 
 
+def test_each_data_set_names_its_table(run: Run) -> None:
+    named = {(item.kind, item.path) for item in run.record.data}
+    assert named == {
+        ("cores", "cores_2025.csv"),
+        ("cover", "cover_2025.csv"),
+        ("section_loss", "section_loss_2025.csv"),
+    }
+
+
 def test_reliability_file_holds_every_curve(run: Run) -> None:
     with xr.open_datatree(run.out / store.RELIABILITY, engine="h5netcdf") as tree:
         for kind in ("annual", "cumulative", "reference", "independent"):

@@ -1,6 +1,6 @@
 """All sections of a case at one stage: reliability, verdicts, dependence dropped, options."""
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import Executor, Future
 from dataclasses import dataclass, replace
 
@@ -31,6 +31,7 @@ from assess.reliability.section import (
     load_factor,
     section_reliability,
     section_sensitivities,
+    solve_load_factor,
 )
 from assess.updating.model import Spec
 from assess.updating.stages import StageDraws
@@ -142,7 +143,7 @@ def _section(
     """Give results of one section: `leave`, then at the last stage each option."""
     state = section_state(case, spec, entry, draws.number, values)
     left = _reliability(case, state, Action(), question, past=past)
-    results = [_result(case, state, draws.name, LEAVE, left, question)]
+    results = [_result(case, state, draws.name, LEAVE, Action(), left, question, past)]
     if past is None:  # a past ties the draws together: there is no dropping that
         torn = without_dependence(state, question.seed)
         dropped = _reliability(case, torn, Action(), question)
@@ -164,9 +165,10 @@ def _section(
                     )
                 )
                 continue
-            # On the same points: what differs between options is then not noise.
+            # On the points of `leave`, unless these are too few for the option: what differs
+            # between options is then not noise.
             found = _reliability(case, state, action, question, left.proposal, past)
-            results.append(_result(case, state, draws.name, name, found, question))
+            results.append(_result(case, state, draws.name, name, action, found, question, past))
     return results
 
 
@@ -241,10 +243,17 @@ def _result(
     state: SectionState,
     stage: str,
     option: str,
+    action: Action,
     found: SectionReliability,
     question: Question,
+    past: Past | None,
 ) -> SectionResult:
     """Judge one section under one option."""
+
+    def under_load(factor: float) -> SectionReliability:
+        scaled = replace(action, load_factor=np.asarray(action.load_factor) * factor)
+        return _reliability(case, state, scaled, question, past=past)
+
     sensitivities = section_sensitivities(state, found)
     governing = next(iter(sensitivities), "")
     return SectionResult(
@@ -257,7 +266,7 @@ def _result(
         cumulative=found.cumulative,
         reference=found.reference,
         independent=None,
-        verdict=_judge(found, question, governing),
+        verdict=_judge(found, question, governing, under_load),
         verdict_independent=None,
         sensitivities=sensitivities,
         evaluations=found.evaluations,
@@ -265,10 +274,23 @@ def _result(
     )
 
 
-def _judge(found: SectionReliability, question: Question, governing: str) -> Verdict:
-    """Judge integrated curves, with the load factor that would meet the target now."""
+def _judge(
+    found: SectionReliability,
+    question: Question,
+    governing: str,
+    again: Callable[[float], SectionReliability] | None = None,
+) -> Verdict:
+    """Judge integrated curves, with the load factor that would meet the target now.
+
+    Where the target is missed a limit is to be proposed: with ``again``, which integrates under a
+    scaled load, the factor holds however far from today's load it leads.
+    """
     allowed = float(probability_from_index(question.target.index))
-    factor = load_factor(found, allowed, question.target.period)
+    period = question.target.period
+    if again is not None and found.reference.index[0] < question.target.index:
+        factor = solve_load_factor(found, again, allowed, period)
+    else:
+        factor = load_factor(found, allowed, period)
     return verdict(
         found.reference, found.conditional, question.target, factor, governing, found.draw_weight
     )

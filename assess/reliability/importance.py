@@ -38,6 +38,8 @@ SHARES = np.array([0.0, 0.05, 0.2, 0.5, 1.0])  # of the way to the linear form's
 BISECTIONS = 30
 APART = 1.5  # distance from which modes, and scouts of a second one, count as two
 SECOND_SHARE = 0.005  # of the failure probability, for which second modes are sampled too
+LOOKOUTS = 32  # draws that climb from every scout, to see how many modes there are
+MOST_MODES = 6
 ELEMENTS = 400_000  # capacity evaluations held in memory at a time
 
 
@@ -222,15 +224,10 @@ def find_modes(problem: Problem, year: int, starts: Sequence[FloatArray] = ()) -
     first.climb(log_hazard, scouts[seen.argmax(axis=1)], pilot)
     for start in starts or [np.zeros_like(first.mode)]:
         first.climb(log_hazard, start[pilot], pilot)
-    second = _Found.nothing(problem)
-    apart = np.linalg.norm(scouts - first.mode[pilot, None, :], axis=-1) > APART
-    second.climb(log_hazard, scouts[np.where(apart, seen, -np.inf).argmax(axis=1)], pilot)
-    worth = _share_apart(first, second, pilot) > SECOND_SHARE
-    first.climb(log_hazard, first.mode[pilot[nearest]], rest)
-    centres: tuple[FloatArray, ...] = (first.mode,)
-    if worth:
-        second.climb(log_hazard, second.mode[pilot[nearest]], rest)
-        centres = (first.mode, second.mode)
+    others = _others(log_hazard, problem, first, scouts, pilot)
+    for found in (first, *others):
+        found.climb(log_hazard, found.mode[pilot[nearest]], rest)
+    centres = (first.mode, *(found.mode for found in others))
     return Modes(centres, first.height, spent)
 
 
@@ -268,15 +265,34 @@ def _look_around(log_hazard: Hazard, scouts: FloatArray, chosen: IntArray) -> Fl
     return seen
 
 
-def _share_apart(first: _Found, second: _Found, pilot: IntArray) -> float:
-    """Share of the failure probability that second modes apart from the first ones hold.
+def _others(
+    log_hazard: Hazard, problem: Problem, first: "_Found", scouts: FloatArray, pilot: IntArray
+) -> list["_Found"]:
+    """Find further modes that hold a share of the failure probability worth sampling.
 
-    By the heights alone: the widths of two modes of one draw are taken as alike.
+    Some draws climb from every scout; the scout that leads to most of what no centre is near
+    to starts the next mode of all draws. Heights stand for masses: widths are taken as alike.
     """
-    top = first.height[pilot].max()
-    distance = np.linalg.norm(first.mode[pilot] - second.mode[pilot], axis=1)
-    other = np.where(distance > APART, np.exp(second.height[pilot] - top), 0.0)
-    return float(other.sum() / np.exp(first.height[pilot] - top).sum())
+    likely = np.argsort(-first.height[pilot], kind="stable")[: LOOKOUTS // 2]
+    spread = np.linspace(0, len(pilot) - 1, LOOKOUTS // 2).astype(np.int64)
+    look = pilot[np.unique(np.concatenate([likely, spread]))]
+    shape = (len(look), len(scouts))
+    mode, height = _climb(log_hazard, np.tile(scouts, (len(look), 1)), np.repeat(look, len(scouts)))
+    mode, height = mode.reshape(*shape, -1), height.reshape(shape)
+    top = first.height[look].max()
+    mass, whole = np.exp(height - top), np.exp(first.height[look] - top).sum()
+    near = np.linalg.norm(mode - first.mode[look][:, None, :], axis=-1) <= APART
+    found: list[_Found] = []
+    while len(found) < MOST_MODES - 1:
+        gain = np.where(near, 0.0, mass).sum(axis=0)
+        best = int(gain.argmax())
+        if not gain[best] > SECOND_SHARE * whole:
+            break
+        other = _Found.nothing(problem)
+        other.climb(log_hazard, np.tile(scouts[best], (len(pilot), 1)), pilot)
+        found.append(other)
+        near |= np.linalg.norm(mode - mode[:, best, None, :], axis=-1) <= APART
+    return found
 
 
 def _pilot(problem: Problem) -> tuple[IntArray, IntArray, IntArray]:
@@ -432,7 +448,7 @@ def draw_sample(problem: Problem, proposal: Proposal, replicates: int) -> Sample
                     z[replicate, number, part, None], owner[part], years
                 )[:, 0]
                 # Beyond e^50 failure is certain; the bound keeps sums over years finite.
-                hazard[replicate, number, part] = np.exp(np.minimum(log_hazard, 50.0))
+                hazard[replicate, number, part] = np.exp(np.minimum(log_hazard, 700.0))
     survival = np.ones_like(weight)
     if problem.log_survival is not None:
         for replicate in range(replicates):

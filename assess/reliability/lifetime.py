@@ -1,6 +1,6 @@
 """Failure probabilities over years from a weighted sample, with both of their errors."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,8 +18,8 @@ from assess.reliability.index import index_error, index_from_probability
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
 
-REPLICATES = 4
-FIRST_POINTS = 2  # per draw, replicate and centre, on average, in the first pass
+REPLICATES = 8
+FIRST_POINTS = 1.25  # per draw, replicate and centre, on average, in the first pass
 MOST_ELEMENTS = 16_000_000  # hazards held at a time: replicates, centres, points, years
 
 
@@ -196,9 +196,11 @@ def integrate(
     -----
     Each pass shares twice as many points out among the draws as the pass before, by what that
     one found each draw to contribute; it takes points of its own, so that where they lie does
-    not depend on what they find.
+    not depend on what they find. A pass whose replicates agree by chance must not end the search:
+    the error of the pass before, over the root of two, counts where it is larger.
     """
     spent = 0
+    before = np.zeros(problem.years)
     if proposal is None:
         proposal, spent = first_proposal(problem, seed)
     first, last = windows(problem.years, 1)
@@ -206,6 +208,8 @@ def integrate(
         sample = draw_sample(problem, proposal, REPLICATES)
         spent += sample.evaluations
         annual = probabilities(sample, first, last, chains)
+        stated = np.maximum(annual.integration_error, before / np.sqrt(2.0))
+        annual, before = replace(annual, integration_error=stated), stated
         # Where failure is more likely than not, the third digit of a negative index decides
         # nothing; its error is reported all the same.
         open_question = annual.index > 0.0
@@ -243,6 +247,6 @@ def first_proposal(problem: Problem, seed: int) -> tuple[Proposal, int]:
         centres += found.centres
         heights.append(np.exp(found.heights - found.heights.max()))
         spent += found.evaluations
-    points = allocate(np.stack(heights, axis=1), FIRST_POINTS * problem.draws)
+    points = allocate(np.stack(heights, axis=1), int(FIRST_POINTS * problem.draws))
     state: int = np.random.SeedSequence(seed).generate_state(1).item()
     return Proposal(tuple(centres), points, state), spent

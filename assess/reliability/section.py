@@ -1,5 +1,6 @@
 """Reliability of one section over the years: curves, conditional indices, sensitivities."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -16,6 +17,8 @@ from assess.reliability.sensitivity import sensitivity_factors
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
+REFINEMENTS = 4  # integrals for a load factor that leads far from today's load
+NEARBY = 0.15  # step of ln(load factor) over which one sample serves
 BAND = (0.05, 0.95)  # quantiles of the index conditional on the draw
 
 
@@ -178,7 +181,8 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
     -----
     A Gumbel maximum scaled by f has mode f u and scale f b, so that with :math:`x = (u - q)/b`
     of today the logarithm of the hazard becomes :math:`u/b - (u/b - x)/f`. The same weighted
-    sample serves all factors (common random numbers); bisection on ln f.
+    sample serves all factors (common random numbers); bisection on ln f. The points were laid for
+    one load: far from it the factor is rough, see `solve_load_factor`.
     """
     sample = found.sample
     weight = sample.given_past()
@@ -187,7 +191,7 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
     spare = ratio - np.log(hazard)
 
     def probability(log_factor: float) -> float:
-        scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 50.0)).sum(axis=-1)
+        scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 700.0)).sum(axis=-1)
         return float(np.sum(weight * -np.expm1(-scaled)) / len(weight))
 
     low, high = np.log(0.02), np.log(5.0)
@@ -200,3 +204,37 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
         else:
             low = middle
     return float(np.exp(low))
+
+
+def solve_load_factor(
+    found: SectionReliability,
+    again: Callable[[float], SectionReliability],
+    target_probability: float,
+    period: int,
+) -> float | None:
+    """Solve for the load factor that meets the target, laying new points where it leads far.
+
+    Parameters
+    ----------
+    found : SectionReliability
+        Of the section with today's load.
+    again : callable
+        Integrates the section with the variable load scaled by a factor, on points of its own.
+    target_probability, period
+        As for `load_factor`.
+
+    Returns
+    -------
+    float or None
+        As for `load_factor`.
+    """
+    factor = 1.0
+    for _ in range(REFINEMENTS):
+        step = load_factor(found, target_probability, period)
+        if step is None:
+            return None
+        factor *= step
+        if abs(np.log(step)) < NEARBY:
+            break
+        found = again(factor)
+    return factor

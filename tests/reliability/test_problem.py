@@ -61,8 +61,9 @@ def test_before_the_survey_the_section_is_its_zone(example_case, example_spec, v
         np.testing.assert_array_equal(a[name], b[name])
 
 
-def test_dropping_the_dependence_keeps_every_marginal(example_case, example_spec, values):
-    kept = state(example_case, example_spec, values, "S1")
+@pytest.mark.parametrize("section", ["S1", "S2"])
+def test_dropping_the_dependence_keeps_every_marginal(example_case, example_spec, values, section):
+    kept = state(example_case, example_spec, values, section)
     dropped = without_dependence(kept, seed=5)
     for name, draws in kept.common.items():
         assert np.array_equal(np.sort(draws), np.sort(dropped.common[name]))
