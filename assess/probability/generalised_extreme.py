@@ -1,6 +1,11 @@
 """Generalised extreme value distribution of largest values; one body for numbers and graphs."""
 
+import numpy as np
+from numpy.typing import NDArray
+
 from assess.operations import Numeric, exp, log, log1p, maximum, where
+
+FloatArray = NDArray[np.float64]
 
 LEAST_REDUCED = -50.0  # e^50 is improbable enough, and finite
 EDGE = 1e-9  # keeps the logarithm finite beyond the bound of the distribution
@@ -21,8 +26,8 @@ def reduced_variate(standard: Numeric, shape: Numeric) -> Numeric:
     Returns
     -------
     numeric
-        :math:`t = \ln(1 + \xi s)/\xi`, so that :math:`F = \exp(-e^{-t})`. Beyond a bound the
-        value is finite but so large, or so small, that its probability is nothing.
+        :math:`t = \ln(1 + \xi s)/\xi`, so that :math:`F = \exp(-e^{-t})`. Beyond a bound it goes
+        on with slope 1, finite, but so large or so small that the probability is nothing.
 
     References
     ----------
@@ -42,8 +47,32 @@ def reduced_variate(standard: Numeric, shape: Numeric) -> Numeric:
     )
     # Each branch gets arguments of its own, which keeps values and gradients finite.
     inside = maximum(where(small, 1.0, product), -1.0 + EDGE)
-    exact = log1p(inside) / where(small, 1.0, shape)
+    beyond = inside - where(small, 1.0, product)  # 0 up to the bound
+    exact = (log1p(inside) - beyond) / where(small, 1.0, shape)
     return maximum(where(small, series, exact), LEAST_REDUCED)
+
+
+def standard_value(reduced: FloatArray, shape: FloatArray) -> FloatArray:
+    r"""Value that has a reduced variate; numbers only, the inverse of `reduced_variate`.
+
+    Parameters
+    ----------
+    reduced, shape : ndarray
+        :math:`t` and :math:`\xi`; broadcast. [-]
+
+    Returns
+    -------
+    ndarray
+        :math:`s = (e^{\xi t} - 1)/\xi`. [-]
+    """
+    reduced, shape = np.broadcast_arrays(reduced, shape)
+    straight = np.abs(shape * reduced) < 1e-8
+    safe = np.where(straight, 1.0, shape)
+    edge = np.log(EDGE) / safe  # reduced variate of the bound
+    past = (shape < 0.0) & ~straight & (reduced > edge)
+    inside = np.where(past, edge, reduced)
+    value = np.expm1(np.where(straight, 0.0, shape) * inside) / safe
+    return np.where(straight, reduced, value + np.where(past, reduced - edge, 0.0))
 
 
 def log_density(

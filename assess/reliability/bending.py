@@ -113,6 +113,19 @@ def _gumbel(location: float, inverse_scale: float, z: FloatArray) -> FloatArray:
     return np.asarray(location - np.log(-special.log_ndtr(z)) / inverse_scale)
 
 
+def _load_words(entry: BendingSection) -> str:
+    model = entry.loads.variable.annual_maximum.load_model
+    if model is None:
+        return (
+            "The year's largest variable load effect has a Gumbel distribution, years independent "
+            "given the other variables; its parameters are taken as known."
+        )
+    return (
+        f"The year's largest variable load effect follows the load model {model!r}, years "
+        "independent given its parameters, which are uncertain like all other variables."
+    )
+
+
 class Bending(LimitState):
     r"""Bending: :math:`\theta_R M_R(y) \ge \theta_E (G + Q)`.
 
@@ -140,7 +153,7 @@ class Bending(LimitState):
             entry.bars.diameter,
             entry.bars.spread or entry.width,
         )
-        return [*impossible_shape(shape, nominal), *impossible_load(entry.loads, spec.structure)]
+        return [*impossible_shape(shape, nominal), *impossible_load(entry.loads, spec)]
 
     def chances(self, entry: BendingSection) -> Mapping[str, str]:
         """Name the section's own standard normals with their groups."""
@@ -215,11 +228,21 @@ class Bending(LimitState):
             )
         return area
 
+    def load_models(self, entry: BendingSection) -> tuple[str, ...]:
+        """Name the load model of the variable load, if it has one."""
+        name = entry.loads.variable.annual_maximum.load_model
+        return () if name is None else (name,)
+
     def annual_maximum(
-        self, entry: BendingSection, spec: CaseSpec, years: FloatArray
+        self,
+        entry: BendingSection,
+        spec: CaseSpec,
+        years: FloatArray,
+        common: Mapping[str, FloatArray],
     ) -> AnnualMaximum:
         """Largest variable moment of each year [N·mm]."""
-        return entry.loads.variable.annual_maximum.in_years(years, spec.structure.assessed)
+        maximum = entry.loads.variable.annual_maximum
+        return maximum.in_years(years, spec.structure.assessed, common)
 
     def assumptions(self, entry: BendingSection, spec: CaseSpec) -> tuple[str, ...]:
         """Say what the check assumes."""
@@ -233,8 +256,7 @@ class Bending(LimitState):
             f"({resistance.source}).",
             f"Load effect model factor lognormal, mean {effect.mean:g}, V {effect.V:g} "
             f"({effect.source}).",
-            "The year's largest variable load effect has a Gumbel distribution, years independent "
-            "given the other variables; its parameters are taken as known.",
+            _load_words(entry),
             "Resistance counts as that at the end of each year.",
         ]
         if entry.depth_sd is None:

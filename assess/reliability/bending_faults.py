@@ -6,9 +6,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from assess.case.forms import Complaint
-from assess.case.spec import Structure
+from assess.case.spec import CaseSpec
 from assess.mechanics.dimensions import effective_depth
-from assess.reliability.loads import Loads
+from assess.reliability.loads import AnnualMaximumEffect, Loads
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,15 +80,15 @@ def impossible_shape(shape: Shape, cover: float) -> Iterator[Complaint]:
         )
 
 
-def impossible_load(loads: Loads, structure: Structure) -> Iterator[Complaint]:
+def impossible_load(loads: Loads, spec: CaseSpec) -> Iterator[Complaint]:
     """Find variable loads that have no distribution, or that vanish within the horizon.
 
     Parameters
     ----------
     loads : Loads
         Load effects at the section.
-    structure : Structure
-        Tells the years looked at.
+    spec : CaseSpec
+        Tells the years looked at, and the load models there are.
 
     Yields
     ------
@@ -97,6 +97,10 @@ def impossible_load(loads: Loads, structure: Structure) -> Iterator[Complaint]:
     """
     stated = loads.variable.annual_maximum
     place = ("loads", "variable", "annual_maximum")
+    structure = spec.structure
+    if stated.load_model is not None:
+        yield from _wrong_model(stated, spec, place)
+        return
     key = "mean" if stated.mean is not None else "value"
     if not (stated.mean or stated.value):
         mend = "the variable load effect is needed"
@@ -122,3 +126,18 @@ def impossible_load(loads: Loads, structure: Structure) -> Iterator[Complaint]:
             f"more than {most:.3g} for a horizon of {structure.horizon} years",
             "growth is a share of the first year's effect, the same each year",
         )
+
+
+def _wrong_model(
+    stated: AnnualMaximumEffect, spec: CaseSpec, place: tuple[str, ...]
+) -> Iterator[Complaint]:
+    """Find load models that do not exist, or whose quantity does not make a moment."""
+    model = spec.load_models.get(stated.load_model or "")
+    if model is None:
+        what, known = "there is no load model of this name", ", ".join(spec.load_models)
+        yield Complaint((*place, "load_model"), what, str(stated.load_model), known or "none")
+    elif (model.quantity == "force") != (stated.lever is not None):
+        what = f"the load model is of a {model.quantity}"
+        mend = "state the lever, moment over force" if model.quantity == "force" else "no lever"
+        given = "a lever" if stated.lever is not None else "no lever"
+        yield Complaint((*place, "lever"), what, given, "", mend)

@@ -51,11 +51,13 @@ class Problem:
     dimension: int
     draws: int
     years: int
-    load_ratio: FloatArray = field(default_factory=lambda: np.zeros(0))  # mode over scale, a year
+    # Location over scale of the load, (n_year,) or (n_draw, n_year)
+    load_ratio: FloatArray = field(default_factory=lambda: np.zeros(0))
     features: FloatArray | None = None  # (n_draw, k) what makes draws alike, scaled alike
     # (z (n, k, dimension), the n draws) -> ln P(what happened | draw, z), (n, k); None: nothing
     log_survival: Callable[[FloatArray, IntArray], FloatArray] | None = None
     draw_weight: FloatArray | None = None  # (n_draw,) of draws that are not alike; None: alike
+    load_shape: FloatArray | float = 0.0  # (n_draw,), or one for all
 
     @property
     def weights(self) -> FloatArray:

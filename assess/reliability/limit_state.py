@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from assess.case.forms import Complaint, LimitStateForm
 from assess.case.spec import CaseSpec
+from assess.reliability.annual_maximum import AnnualMaximum as AnnualMaximum
 
 FloatArray = NDArray[np.float64]
 
@@ -35,14 +36,6 @@ class Action:
     arrest_age: float = np.inf
     arrest_efficiency: float = 1.0
     load_factor: FloatArray | float = 1.0
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class AnnualMaximum:
-    """Gumbel distribution of each year's largest variable load effect, arrays (n_year,)."""
-
-    mode: FloatArray
-    scale: FloatArray
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -99,8 +92,14 @@ class LimitState(ABC):
     def load_capacity(self, entry: Any, spec: CaseSpec, here: Surroundings) -> FloatArray:
         """Variable load effect that uses the section up exactly, (n, k, n_year)."""
 
+    def load_models(self, entry: Any) -> tuple[str, ...]:
+        """Name the load models, with uncertain parameters, that the section uses."""
+        return ()
+
     @abstractmethod
-    def annual_maximum(self, entry: Any, spec: CaseSpec, years: FloatArray) -> AnnualMaximum:
+    def annual_maximum(
+        self, entry: Any, spec: CaseSpec, years: FloatArray, common: Mapping[str, FloatArray]
+    ) -> AnnualMaximum:
         """Give the largest variable load effect of each calendar year, before any option."""
 
     @abstractmethod

@@ -1,5 +1,7 @@
 """Load effects of a section as the case file states them."""
 
+from collections.abc import Mapping
+from types import MappingProxyType
 from typing import Annotated
 
 import numpy as np
@@ -7,7 +9,13 @@ from numpy.typing import NDArray
 from pydantic import Field, model_validator
 
 from assess.case.forms import Closed
-from assess.case.quantities import CoefficientOfVariation, InUnit, Moment
+from assess.case.quantities import (
+    CoefficientOfVariation,
+    InUnit,
+    Length,
+    Moment,
+    PositiveNumber,
+)
 from assess.mechanics.loads import (
     gumbel_from_fractile,
     gumbel_from_mean,
@@ -18,6 +26,8 @@ from assess.reliability.limit_state import AnnualMaximum
 from assess.units import NONE, QuantityError
 
 FloatArray = NDArray[np.float64]
+
+NOTHING: Mapping[str, FloatArray] = MappingProxyType({})
 
 
 class PermanentLoad(Closed):
@@ -30,15 +40,24 @@ class PermanentLoad(Closed):
 
 
 class AnnualMaximumEffect(Closed):
-    """Largest effect of one year, Gumbel: by its mean, or by a value of a return period."""
+    """Largest effect of one year: Gumbel by mean or return period, or a load model's."""
 
     mean: Moment | None = Field(None, description="mean of the year's largest effect")
     value: Moment | None = Field(None, description="effect of the return period")
     return_period: Annotated[float, InUnit("yr", "a return period", above=1.0)] | None = Field(
         None, description="return period of `value`"
     )
-    V: CoefficientOfVariation = Field(
-        description="coefficient of variation of the year's largest effect"
+    V: CoefficientOfVariation | None = Field(
+        None, description="coefficient of variation of the year's largest effect"
+    )
+    load_model: str | None = Field(
+        None, description="name under `load_models`, whose parameters are uncertain"
+    )
+    factor: PositiveNumber = Field(
+        1.0, description="effect here over the load model's, if a moment"
+    )
+    lever: Length | None = Field(
+        None, description="moment here over the load model's force, where it is one"
     )
     growth: Annotated[float, InUnit(NONE, "a yearly growth", above=-0.1, below=0.1)] = Field(
         0.0, description="yearly growth of the mode, as a fraction of that in the year assessed"
@@ -46,32 +65,42 @@ class AnnualMaximumEffect(Closed):
 
     @model_validator(mode="after")
     def _one_way(self) -> "AnnualMaximumEffect":
-        by_value = self.value is not None and self.return_period is not None
-        only_mean = self.value is None and self.return_period is None
-        if (self.mean is not None and not only_mean) or (self.mean is None and not by_value):
-            given = [
-                name
-                for name in ("mean", "value", "return_period")
-                if getattr(self, name) is not None
-            ]
+        names = ("mean", "value", "return_period", "V", "load_model")
+        given = [name for name in names if getattr(self, name) is not None]
+        if given not in (["mean", "V"], ["value", "return_period", "V"], ["load_model"]):
             raise QuantityError(
                 "a year's largest effect takes one way to be said",
                 " and ".join(given) or "none",
-                "mean with V, or value with return_period and V",
+                "mean with V, or value with return_period and V, or load_model",
             )
         return self
 
     def gumbel(self) -> tuple[float, float]:
-        """Mode and scale in the year of assessment."""
+        """Mode and scale in the year of assessment, where they are stated."""
+        variation = self.V or np.nan
         if self.mean is not None:
-            mode, scale = gumbel_from_mean(self.mean, self.V)
+            mode, scale = gumbel_from_mean(self.mean, variation)
         else:
             probability = probability_from_return_period(self.return_period or np.nan)
-            mode, scale = gumbel_from_fractile(self.value or np.nan, probability, self.V)
+            mode, scale = gumbel_from_fractile(self.value or np.nan, probability, variation)
         return float(mode), float(scale)
 
-    def in_years(self, years: FloatArray, assessed: int) -> AnnualMaximum:
-        """Distribution in each calendar year."""
+    def in_years(
+        self, years: FloatArray, assessed: int, common: Mapping[str, FloatArray] = NOTHING
+    ) -> AnnualMaximum:
+        """Distribution in each calendar year; ``common`` holds draws of load models."""
+        if self.load_model is not None:
+            effect = self.factor if self.lever is None else self.lever
+            name = f"load.{self.load_model}"
+            location, scale_now = (
+                effect * common[f"{name}.{key}"][:, None] for key in ("location", "scale")
+            )
+            grown = 1.0 + self.growth * (years - assessed)
+            return AnnualMaximum(
+                location * grown,
+                scale_now * np.ones(len(years)),
+                common.get(f"{name}.shape", 0.0),
+            )
         mode, scale = self.gumbel()
         return AnnualMaximum(
             mode_in_year(mode, years, float(assessed), self.growth), np.full(len(years), scale)

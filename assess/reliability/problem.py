@@ -53,6 +53,11 @@ def common_names(spec: CaseSpec, entry: SectionEntry) -> tuple[str, ...]:
     return (
         *(f"{entry.zone}.{name}" for name in zone.variables()),
         *(f"steel.{name}" for name in state.steels(entry)),
+        *(
+            f"load.{name}.{key}"
+            for name in state.load_models(entry)
+            for key, _, _ in spec.load_models[name].priors()
+        ),
     )
 
 
@@ -178,35 +183,30 @@ def build_problem(
     -------
     Problem
         Its hazard is minus the log-probability that the year's largest effect stays below the
-        load capacity; for a Gumbel maximum of mode u and scale b its logarithm is
-        ``-(q - u) / b``.
+        load capacity, `AnnualMaximum.log_hazard`.
     """
     limit_state: LimitState = LIMIT_STATES[state.entry.limit_state]
     names = list(dimensions(state))
     age = ages(case)
     maximum = limit_state.annual_maximum(
-        state.entry, case.spec, calendar_years(case).astype(np.float64)
-    )
-    factor = np.broadcast_to(np.asarray(action.load_factor, dtype=np.float64), age.shape)
-    mode, scale = maximum.mode * factor, maximum.scale * factor
+        state.entry, case.spec, calendar_years(case).astype(np.float64), state.common
+    ).scaled(np.broadcast_to(np.asarray(action.load_factor, dtype=np.float64), age.shape))
 
     def log_hazard(z: FloatArray, draws: IntArray, years: IntArray) -> FloatArray:
-        capacity = limit_state.load_capacity(
-            state.entry,
-            case.spec,
-            _surroundings(state, names, z, draws, age[years], action),
-        )
-        return np.asarray((mode[years] - capacity) / scale[years])
+        here = _surroundings(state, names, z, draws, age[years], action)
+        capacity = limit_state.load_capacity(state.entry, case.spec, here)
+        return maximum.log_hazard(capacity, draws, years)
 
     return Problem(
         log_hazard,
         len(names),
         state.draws,
         len(age),
-        mode / scale,
+        maximum.ratio,
         _features(state.common),
         _log_survival(case, state, names, events) if events else None,
         draw_weight,
+        maximum.shape,
     )
 
 
@@ -249,9 +249,10 @@ def _log_survival(
                 total += special.log_ndtr(np.maximum(ratio, -37.0))
                 continue
             years = np.arange(event.from_year, event.to_year + 1.0)
-            maximum = limit_state.annual_maximum(state.entry, case.spec, years)
-            mode, scale = maximum.mode * event.load_factor, maximum.scale * event.load_factor
-            hazard = np.exp(np.minimum((mode - capacity(z, draws, years)) / scale, 50.0))
+            maximum = limit_state.annual_maximum(state.entry, case.spec, years, state.common)
+            maximum = maximum.scaled(np.full(len(years), event.load_factor))
+            log_hazard = maximum.log_hazard(capacity(z, draws, years), draws, np.arange(len(years)))
+            hazard = np.exp(np.minimum(log_hazard, 50.0))
             total -= np.minimum(hazard.sum(axis=-1), 700.0)
         return total
 

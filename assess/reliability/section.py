@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 
 from assess.case.events import Event
 from assess.case.reader import Case
+from assess.probability.generalised_extreme import reduced_variate, standard_value
 from assess.reliability.importance import Proposal, Sample
 from assess.reliability.lifetime import Probabilities, integrate, probabilities, windows
 from assess.reliability.limit_state import Action
@@ -55,7 +56,8 @@ class SectionReliability:
     conditional: FloatArray  # probability given the draw, (n_draw, n_reference)
     draw_weight: FloatArray  # weight of each draw given the section's past, mean 1
     sample: Sample
-    load_ratio: FloatArray  # mode over scale of each year's load, (n_year,)
+    load_ratio: FloatArray  # location over scale of the load, (n_year,) or (n_draw, n_year)
+    load_shape: FloatArray | float  # of its distribution, (n_draw,) or one for all
     proposal: Proposal
     evaluations: int
 
@@ -136,6 +138,7 @@ def section_reliability(
         reference.draw_weight,
         sample,
         problem.load_ratio,
+        problem.load_shape,
         found.proposal,
         found.evaluations,
     )
@@ -179,19 +182,29 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
 
     Notes
     -----
-    A Gumbel maximum scaled by f has mode f u and scale f b, so that with :math:`x = (u - q)/b`
-    of today the logarithm of the hazard becomes :math:`u/b - (u/b - x)/f`. The same weighted
+    A maximum scaled by f has location f u and scale f b, so that a capacity of q/b scales of
+    today's load lies :math:`q/(b f) - u/b` of the scales above its location then. The same weighted
     sample serves all factors (common random numbers); bisection on ln f. The points were laid for
     one load: far from it the factor is rough, see `solve_load_factor`.
     """
     sample = found.sample
     weight = sample.given_past()
     hazard = np.maximum(sample.hazard[..., :period], 1e-300)
-    ratio = found.load_ratio[:period]
-    spare = ratio - np.log(hazard)
+    ratio = found.load_ratio[..., :period]
+    shape = np.asarray(found.load_shape, dtype=np.float64)
+    if ratio.ndim > 1:
+        ratio = ratio[sample.owner]
+    if shape.ndim:
+        shape = shape[sample.owner][:, None]
+    reduced = -np.log(hazard)
+    gumbel = not np.any(shape)
+    above = reduced if gumbel else standard_value(reduced, shape)
+    capacity = ratio + above  # over the scale of today's load
 
     def probability(log_factor: float) -> float:
-        scaled = np.exp(np.minimum(ratio - spare / np.exp(log_factor), 700.0)).sum(axis=-1)
+        under = capacity / np.exp(log_factor) - ratio
+        under = under if gumbel else reduced_variate(under, shape)
+        scaled = np.exp(np.minimum(-under, 700.0)).sum(axis=-1)
         return float(np.sum(weight * -np.expm1(-scaled)) / len(weight))
 
     low, high = np.log(0.02), np.log(5.0)

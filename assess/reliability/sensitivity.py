@@ -77,6 +77,13 @@ def sensitivity_factors(state: SectionState, sample: Sample, year: int) -> dict[
     return {group: float(np.sqrt(share / norm)) for group, share in ordered}
 
 
+def _common_group(name: str) -> str:
+    """Name the group that a common variable counts to."""
+    if name.startswith("load."):
+        return VARIABLE_LOAD
+    return _COMMON_GROUPS.get(name.rpartition(".")[2], "steel strength")
+
+
 def _load_mean(hazard: FloatArray, failing: FloatArray, total: float) -> float:
     """Mean score of the year's load given failure."""
     log_tail = np.log(np.maximum(-np.expm1(-hazard), 1e-300))
@@ -91,7 +98,7 @@ def _common_shares(state: SectionState, by_draw: FloatArray) -> list[tuple[str, 
     columns = {name: draws for name, draws in state.common.items() if np.ptp(draws) > 0.0}
     if not columns:
         return []
-    groups = [_COMMON_GROUPS.get(name.rpartition(".")[2], "steel strength") for name in columns]
+    groups = [_common_group(name) for name in columns]
     scores = normal_scores(np.column_stack(list(columns.values())))
     mean = by_draw @ scores
     correlation = np.corrcoef(scores, rowvar=False)

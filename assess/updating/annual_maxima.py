@@ -13,7 +13,7 @@ from assess.case.load_models import LoadModel
 from assess.case.quantities import CoefficientOfVariation
 from assess.case.reader import Case
 from assess.errors import Fault
-from assess.probability.generalised_extreme import LEAST_REDUCED, log_density
+from assess.probability.generalised_extreme import LEAST_REDUCED, log_density, standard_value
 from assess.updating.kind import EvidenceKind, FloatArray, Numeric, Rows, build_rows, gather
 from assess.updating.local import LocalModel
 
@@ -189,13 +189,7 @@ class AnnualMaxima(EvidenceKind):
         )
         uniform = rng.uniform(size=(len(location), len(rows.value)))
         reduced = np.maximum(-np.log(-np.log(uniform) / rows.extra["period"]), LEAST_REDUCED)
-        product = shape * reduced
-        near = np.abs(product) < 1e-8
-        standard = np.where(
-            near,
-            reduced,
-            np.expm1(product) / np.where(near, 1.0, np.broadcast_to(shape, product.shape)),
-        )
+        standard = standard_value(reduced, shape)
         error = np.exp(rows.extra["error"] * rng.standard_normal(uniform.shape))
         return np.asarray((location + scale * standard) * error)
 

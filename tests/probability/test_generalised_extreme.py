@@ -7,7 +7,12 @@ import pandas as pd
 import pytest
 from scipy import optimize, stats
 
-from assess.probability.generalised_extreme import log_density, log_hazard, reduced_variate
+from assess.probability.generalised_extreme import (
+    log_density,
+    log_hazard,
+    reduced_variate,
+    standard_value,
+)
 
 PORT_PIRIE = pd.read_csv(
     Path(__file__).parents[1] / "published" / "annual_maxima_port_pirie.csv", comment="#"
@@ -39,6 +44,7 @@ def test_beyond_a_bound_nothing_is_possible_yet_finite():
     beyond = log_density(np.array([5.0]), 0.0, 1.0, -0.5)  # bounded above at 2
     assert np.isfinite(beyond[0])
     assert beyond[0] < -15.0
+    assert log_density(np.array([6.0]), 0.0, 1.0, -0.5)[0] < beyond[0]  # a way back for a sampler
     below = log_density(np.array([-5.0]), 0.0, 1.0, 0.5)  # bounded below at -2
     assert np.isfinite(below[0])
     assert below[0] < -1e10
@@ -81,3 +87,11 @@ def test_small_shapes_join_smoothly():
     values = reduced_variate(s, around)
     exact = np.log1p(around * s) / around
     np.testing.assert_allclose(values, exact, rtol=1e-12)
+
+
+@pytest.mark.parametrize("shape", [-0.3, -1e-10, 0.0, 1e-4, 0.2])
+def test_values_come_back_from_their_reduced_variates(shape):
+    s = np.linspace(-2.0, 30.0, 33)  # beyond the bound of a negative shape, too
+    np.testing.assert_allclose(
+        standard_value(reduced_variate(s, shape), np.float64(shape)), s, rtol=1e-6, atol=1e-9
+    )

@@ -142,7 +142,7 @@ def test_yearly_maxima_grow_from_the_year_of_assessment(make_case):
     loads["variable"]["annual_maximum"] = {"mean": "250 kN*m", "V": 0.12, "growth": 0.02}
     case = case_of(make_case, loads=loads)
     years = np.array([2026.0, 2027.0, 2036.0])
-    found = BENDING.annual_maximum(case.spec.sections()["S1"], case.spec, years)
+    found = BENDING.annual_maximum(case.spec.sections()["S1"], case.spec, years, {})
     scale = 250e6 * 0.12 * np.sqrt(6.0) / np.pi
     mode = 250e6 - 0.5772156649 * scale
     np.testing.assert_allclose(found.scale, scale)

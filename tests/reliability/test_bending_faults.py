@@ -1,4 +1,5 @@
 from dataclasses import replace
+from types import SimpleNamespace
 
 import pytest
 
@@ -7,7 +8,9 @@ from assess.reliability.bending_faults import Shape, impossible_load, impossible
 from assess.reliability.loads import Loads
 
 SHAPE = Shape(1000.0, 320.0, (1800.0, 180.0), 10.0, 7, 32.0, 320.0)
-STRUCTURE = Structure(name="a", built=1971, assessed=2026, horizon=30)
+SPEC = SimpleNamespace(
+    structure=Structure(name="a", built=1971, assessed=2026, horizon=30), load_models={}
+)
 
 
 def test_a_sound_shape() -> None:
@@ -41,9 +44,9 @@ def loads(**maximum: object) -> Loads:
 
 
 def test_sound_loads() -> None:
-    assert list(impossible_load(loads(mean="460 kN*m", V=0.12, growth=-0.03), STRUCTURE)) == []
+    assert list(impossible_load(loads(mean="460 kN*m", V=0.12, growth=-0.03), SPEC)) == []
     by_period = loads(value="730 kN*m", return_period="1000 yr", V=0.12)
-    assert list(impossible_load(by_period, STRUCTURE)) == []
+    assert list(impossible_load(by_period, SPEC)) == []
 
 
 @pytest.mark.parametrize(
@@ -61,6 +64,6 @@ def test_sound_loads() -> None:
     ],
 )
 def test_a_load_without_a_distribution(maximum: dict[str, object], key: str, words: str) -> None:
-    (complaint,) = impossible_load(loads(**maximum), STRUCTURE)
+    (complaint,) = impossible_load(loads(**maximum), SPEC)
     assert complaint.keys == ("loads", "variable", "annual_maximum", key)
     assert words in complaint.what

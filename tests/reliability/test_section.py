@@ -134,7 +134,9 @@ def _factor_and_index(target, lives, variation):
         return integrate(problem(factor), chains=4, tolerance=0.005, seed=3)
 
     def at(factor):
-        return SimpleNamespace(sample=run(factor).sample, load_ratio=problem(1.0).load_ratio)
+        return SimpleNamespace(
+            sample=run(factor).sample, load_ratio=problem(1.0).load_ratio, load_shape=0.0
+        )
 
     factor = solve_load_factor(at(1.0), at, float(probability_from_index(target)), 1)
     return factor, None if factor is None else run(factor).annual.index[0]
