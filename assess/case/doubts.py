@@ -208,19 +208,19 @@ def repeated(form: EvidenceForm, table: Table) -> list[Fault]:
     -------
     list of Fault
         Doubts: identical rows (notes aside) that name a location, or that agree in two numbers
-        or more; and a location that has the same value again.
+        or more; and a location that has the same value again, where nothing tells them apart.
     """
     seen_rows: dict[tuple[object, ...], int] = {}
     seen_values: dict[tuple[object, ...], int] = {}
     doubts = []
-    numbers = [*table.numbers.values(), *table.beyond.values()]
+    numbers = [*table.numbers.values(), *table.beyond.values(), *table.below.values()]
     texts = [values for name, values in table.texts.items() if name != "note"]
     for row, line in enumerate(table.lines.tolist()):
         said = tuple(None if np.isnan(v[row]) else float(v[row]) for v in numbers)
         row_key = (*said, *(str(v[row]) for v in texts))
         place = tuple(str(table.texts[name][row]) for name in ("zone", "section", "location"))
         value = float(table.numbers[form.value][row])
-        value_key = (*place, value)
+        value_key = (*place, value, *(float(table.numbers[name][row]) for name in form.apart))
         telling = bool(place[2]) or sum(one is not None for one in said) >= 2
         if telling and row_key in seen_rows:
             what = f"the row repeats line {seen_rows[row_key]}"

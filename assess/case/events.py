@@ -11,7 +11,7 @@ from assess.case.quantities import CoefficientOfVariation, Moment
 class LoadTest(Closed):
     """A section carried a known load effect on a day, beside its permanent load."""
 
-    kind: Literal["load test"]
+    kind: Literal["load test"] = Field(description="a load test")
     section: str = Field(min_length=1, description="section that was loaded")
     year: int = Field(description="year of the test")
     effect: Moment = Field(description="variable load effect that was carried at the section")
@@ -24,7 +24,7 @@ class LoadTest(Closed):
 class PastService(Closed):
     """A section has served for years without failure under its variable load."""
 
-    kind: Literal["past service"]
+    kind: Literal["past service"] = Field(description="years served without failure")
     section: str = Field(min_length=1, description="section that has served")
     from_year: int = Field(alias="from", description="first year that counts")
     to_year: int = Field(alias="to", description="last year that counts")

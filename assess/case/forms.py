@@ -71,6 +71,7 @@ class Column:
     usual: tuple[float, float] | None = None  # outside: a doubt (another unit?)
     choices: tuple[str, ...] = ()  # for text columns
     censored: bool = False  # may say ">80": at least that much
+    below_detection: bool = False  # may say "<0.01": less than that
     absent: tuple[str, ...] = ()  # words that mean "looked for, none found"
 
 
@@ -78,7 +79,7 @@ class Column:
 class Table:
     """A survey table after reading: internal units, one row per measurement.
 
-    ``numbers[name]`` is NaN where the cell was censored, absent or (optional columns) empty.
+    ``numbers[name]`` is NaN where the cell was a bound, absent or (optional columns) empty.
     """
 
     path: Path
@@ -86,6 +87,7 @@ class Table:
     numbers: Mapping[str, FloatArray]
     texts: Mapping[str, TextArray]  # "" where empty
     beyond: Mapping[str, FloatArray] = field(default_factory=dict)  # the 80 of ">80", else NaN
+    below: Mapping[str, FloatArray] = field(default_factory=dict)  # the 0.01 of "<0.01", else NaN
     absent: Mapping[str, BoolArray] = field(default_factory=dict)  # True at "none found"
     units: Mapping[str, str] = field(default_factory=dict)  # of the headers, as written
 
@@ -121,6 +123,7 @@ class EvidenceForm:
     value: str  # name of the column that outlier and duplicate checks look at
     log_scale: bool = False  # outliers are judged on the logarithm
     judged: Judged | None = None  # left out: the value column is judged
+    apart: tuple[str, ...] = ()  # number columns that tell rows of one location apart: a depth
     zoned: bool = True  # whether a row speaks of a zone; loads and quantities do not
     doubts: Doubter = no_doubts
 

@@ -50,7 +50,7 @@ class MomentMaxima(LoadModel):
 
     meanings = _meanings(MomentDistribution)
 
-    quantity: Literal["moment"]
+    quantity: Literal["moment"] = Field(description="what the maxima are of")
     location: MomentDistribution = Field(description="location parameter, as uncertain")
     scale: Annotated[MomentDistribution, AfterValidator(only_positive)] = Field(
         description="scale parameter, as uncertain"
@@ -62,7 +62,7 @@ class ForceMaxima(LoadModel):
 
     meanings = _meanings(ForceDistribution)
 
-    quantity: Literal["force"]
+    quantity: Literal["force"] = Field(description="what the maxima are of")
     location: ForceDistribution = Field(description="location parameter, as uncertain")
     scale: Annotated[ForceDistribution, AfterValidator(only_positive)] = Field(
         description="scale parameter, as uncertain"

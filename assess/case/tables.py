@@ -27,6 +27,7 @@ _MOST_FAULTS = 20  # of one column
 _Complaint = tuple[str, str, str, str]  # what, given, allowed, mend
 _COMMA_NUMBER = re.compile(r"[+-]?\d*,\d+(?:[eE][+-]?\d+)?|[+-]?\d+,")
 _BEYOND = re.compile(r"(?:>=|>|≥)\s*(.+)")
+_BELOW = re.compile(r"(?:<=|<|≤)\s*(.+)")
 
 
 def read_table(
@@ -82,7 +83,8 @@ def examine_table(
     reading.cells()
     lines = np.array(raw.lines, dtype=np.int64)
     head = {written.column.name: written.unit for written in reading.written}
-    table = Table(path, lines, reading.numbers, reading.texts, reading.beyond, reading.absent, head)
+    read = (reading.numbers, reading.texts, reading.beyond, reading.below, reading.absent)
+    table = Table(path, lines, *read, head)
     doubts = list(reading.doubts)
     for written in reading.written:
         if written.column.name not in reading.mistaken:
@@ -116,6 +118,7 @@ class _Reading:
     numbers: dict[str, FloatArray] = field(default_factory=dict)
     texts: dict[str, TextArray] = field(default_factory=dict)
     beyond: dict[str, FloatArray] = field(default_factory=dict)
+    below: dict[str, FloatArray] = field(default_factory=dict)
     absent: dict[str, BoolArray] = field(default_factory=dict)
     written: list[doubting.Written] = field(default_factory=list)
     mistaken: set[str] = field(default_factory=set)  # columns in another unit than the header's
@@ -236,7 +239,7 @@ class _Reading:
     def _number_column(
         self, column: Column, cells: list[str], wanted: bool, place: _Place | None
     ) -> None:
-        values, refused, beyond = (np.full(len(cells), np.nan) for _ in range(3))
+        values, refused, beyond, below = (np.full(len(cells), np.nan) for _ in range(4))
         absent = np.zeros(len(cells), dtype=bool)
         complaints: list[tuple[int, str, str, str, str]] = []
         outside: dict[int, _Complaint] = {}
@@ -253,13 +256,15 @@ class _Reading:
             if cell.lower() in words:
                 absent[row] = True
                 continue
-            limit = _BEYOND.fullmatch(cell)
-            number = _number(limit[1] if limit and column.censored else cell)
+            over = _BEYOND.fullmatch(cell) if column.censored else None
+            under = _BELOW.fullmatch(cell) if column.below_detection else None
+            bound = over or under
+            number = _number(bound[1] if bound else cell)
             if isinstance(number, float):
                 number *= factor
                 complaint = check(number, cell)
                 if complaint is None:
-                    (beyond if limit else values)[row] = number
+                    (beyond if over else below if under else values)[row] = number
                 else:
                     outside[row], refused[row] = complaint, number
             else:
@@ -273,6 +278,8 @@ class _Reading:
         self.numbers[column.name] = values
         if column.censored:
             self.beyond[column.name] = beyond
+        if column.below_detection:
+            self.below[column.name] = below
         if column.absent:
             self.absent[column.name] = absent
 
@@ -335,6 +342,8 @@ def _no_number(cell: str, kind: str, column: Column) -> _Complaint:
         allowed += f", or {listed(column.absent)}"
     if column.censored:
         allowed += ", or such as >80 for at least that much"
+    if column.below_detection:
+        allowed += ", or such as <0.01 for less than that"
     mend = ""
     if cell.startswith("="):
         what = "a formula that was never computed"
@@ -342,7 +351,7 @@ def _no_number(cell: str, kind: str, column: Column) -> _Complaint:
     if re.fullmatch(r"\d{4}-\d\d-\d\d[ T]?[\d:.]*", cell):
         mend = "a date? give the cells the format of numbers, and type the number anew"
         return "a date where a number is wanted", shown, allowed, mend
-    if _BEYOND.fullmatch(cell):
+    if _BEYOND.fullmatch(cell) or _BELOW.fullmatch(cell):
         return "cannot be a bound", shown, allowed, mend
     if re.fullmatch(r"[+-]?\d{1,3}([.,' ]\d{3})+([.,]\d+)?", cell):
         mend = "write it without marks for the thousands"

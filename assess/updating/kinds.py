@@ -5,8 +5,14 @@ from importlib.metadata import EntryPoint, entry_points
 from types import MappingProxyType
 
 from assess.updating.annual_maxima import AnnualMaxima
+from assess.updating.carbonation_depth import CarbonationDepth
+from assess.updating.chloride_profile import ChlorideProfile
 from assess.updating.cores import Cores
+from assess.updating.corrosion_current import CorrosionCurrent
 from assess.updating.cover import Cover
+from assess.updating.crack_width import CrackWidth
+from assess.updating.delamination import Delamination
+from assess.updating.half_cell import HalfCell
 from assess.updating.kind import EvidenceKind
 from assess.updating.section_loss import SectionLoss
 
@@ -14,7 +20,18 @@ from assess.updating.section_loss import SectionLoss
 # `EvidenceKind` which can be made without arguments.
 GROUP = "assess.evidence"
 
-OWN: tuple[EvidenceKind, ...] = (AnnualMaxima(), Cores(), Cover(), SectionLoss())
+OWN: tuple[EvidenceKind, ...] = (
+    AnnualMaxima(),
+    CarbonationDepth(),
+    ChlorideProfile(),
+    Cores(),
+    CorrosionCurrent(),
+    Cover(),
+    CrackWidth(),
+    Delamination(),
+    HalfCell(),
+    SectionLoss(),
+)
 
 
 def installed(points: Iterator[EntryPoint]) -> Iterator[EvidenceKind]:

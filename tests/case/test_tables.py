@@ -9,7 +9,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from assess.case.forms import Column, EvidenceForm, Table, Vocabulary
+from assess.case.forms import Column, EvidenceEntry, EvidenceForm, Table, Vocabulary
 from assess.case.tables import read_table
 
 
@@ -86,6 +86,66 @@ def test_readings_beyond_range_are_kept_as_bounds(tmp_path: Path, cover: Evidenc
     table = sound(tmp_path, cover, "cover [cm]\n4\n>8\n≥ 8,5\n>= 9\n")
     np.testing.assert_array_equal(np.isnan(table.numbers["cover"]), [False, True, True, True])
     np.testing.assert_allclose(table.beyond["cover"], [math.nan, 80.0, 85.0, 90.0])
+
+
+CHLORIDE = EvidenceForm(
+    key="chloride_profile",
+    title="chloride contents",
+    entry=EvidenceEntry,
+    columns=(
+        Column("from", "upper face", "mm"),
+        Column("chloride", "content", "-", above=0.0, below=0.2, below_detection=True),
+        Column("depth", "of the front", "mm", required=False, censored=True, below_detection=True),
+    ),
+    value="chloride",
+    apart=("from",),
+)
+
+
+def test_contents_below_detection_are_kept_as_bounds(tmp_path: Path) -> None:
+    text = "from [mm];chloride [%]\n0;1,2\n10;<0,02\n20;≤ 0,01\n30;<=1e-2\n"
+    table = sound(tmp_path, CHLORIDE, text)
+    np.testing.assert_allclose(table.numbers["chloride"], [0.012, math.nan, math.nan, math.nan])
+    np.testing.assert_allclose(table.below["chloride"], [math.nan, 2e-4, 1e-4, 1e-4])
+    assert "chloride" not in table.beyond
+    assert "from" not in table.below
+
+
+def test_a_column_may_be_bounded_on_both_sides(tmp_path: Path) -> None:
+    table = sound(tmp_path, CHLORIDE, "from [mm];chloride [%];depth [cm]\n0;1;<1\n0;2;>4\n0;3;2\n")
+    np.testing.assert_allclose(table.below["depth"], [10.0, math.nan, math.nan])
+    np.testing.assert_allclose(table.beyond["depth"], [math.nan, 40.0, math.nan])
+    np.testing.assert_allclose(table.numbers["depth"], [math.nan, math.nan, 20.0])
+
+
+@pytest.mark.parametrize(
+    ("row", "message"),
+    [
+        ("0;<x", "t.csv:2: .* cannot be a bound, given '<x', allowed a number, or such as <0.01"),
+        ("0;>1", "t.csv:2: .* cannot be a bound, given '>1', allowed .* such as <0.01 for less"),
+        ("<0;1", "t.csv:2: column 'from': cannot be a bound, given '<0', allowed a number$"),
+        ("0;<0", "t.csv:2: .* out of range, given <0, allowed more than 0"),
+        ("0;<-1", "t.csv:2: .* out of range, given <-1"),
+        ("0;<80", "t.csv:2: .* out of range, given <80"),
+    ],
+)
+def test_bounds_that_are_none(tmp_path: Path, row: str, message: str) -> None:
+    _, (fault,), _ = outcome(tmp_path, CHLORIDE, f"from [mm];chloride [%]\n{row}\n")
+    with pytest.raises(ValueError, match=message):
+        raise ValueError(fault)
+
+
+def test_bounds_count_where_rows_are_compared(tmp_path: Path) -> None:
+    head = "location;from [mm];chloride [%]\n"
+    _, _, doubts = outcome(tmp_path, CHLORIDE, head + "A;10;<0.02\nA;10;<0.01\nA;10;<0.01\n")
+    assert doubts == ["t.csv:4: the row repeats line 3, counted twice? delete one"]
+
+
+def test_equal_contents_at_two_depths_are_no_repetition(tmp_path: Path) -> None:
+    head = "location;from [mm];chloride [%]\n"
+    sound(tmp_path, CHLORIDE, head + "A;10;0.1\nA;20;0.1\n")
+    _, _, (doubt,) = outcome(tmp_path, CHLORIDE, head + "A;10;0.1\nA;20;0.1\nA;20;0.1\n")
+    assert "the row repeats line 3" in doubt
 
 
 def test_absent_is_not_missing(tmp_path: Path, loss: EvidenceForm) -> None:
