@@ -49,9 +49,21 @@ class AnnualMaxima(EvidenceKind):
         entry=AnnualMaximaEntry,
         columns=(
             Column(
-                MAXIMUM["moment"], "largest moment of the period", "N*mm", required=False, above=0.0
+                MAXIMUM["moment"],
+                "largest moment of the period",
+                "N*mm",
+                required=False,
+                above=0.0,
+                usual=(1e6, 1e11),
             ),
-            Column(MAXIMUM["force"], "largest force of the period", "N", required=False, above=0.0),
+            Column(
+                MAXIMUM["force"],
+                "largest force of the period",
+                "N",
+                required=False,
+                above=0.0,
+                usual=(1e3, 1e8),
+            ),
             Column(
                 "period",
                 "length of the period, a year if left out",

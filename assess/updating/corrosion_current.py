@@ -153,7 +153,8 @@ class CorrosionCurrent(EvidenceKind):
         "A corrosion current that was read is the local mean current since the onset times a "
         "factor of the device, one of the season at that visit and an error; a passive bar reads "
         "below the device's limit; a place that was also looked at by other means counts as "
-        "another place of the zone."
+        "another place of the zone, and a reading at a section informs the zone, not the section's "
+        "own onset and current."
     )
     carrier = "current"
 

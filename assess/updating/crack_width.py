@@ -121,7 +121,8 @@ class CrackWidth(EvidenceKind):
         "The crack along a bar shows its loss of radius by the relation of Vidal et al. (2004), up "
         "to a factor common to all cracks and one of the place; a bar without a crack has lost "
         "less than cracks its cover (Alonso et al. 1998); a place that was also looked at by other "
-        "means counts as another place of the zone."
+        "means counts as another place of the zone, and a crack at a section informs the zone, not "
+        "the section's own onset and current."
     )
     carrier = "onset"
 

@@ -5,6 +5,7 @@ from pydantic import ValidationError
 
 from assess.case.catalogue import catalogue, fitting, from_catalogue
 from assess.case.distributions import (
+    DiffusionDistribution,
     LengthDistribution,
     NumberDistribution,
     distribution_of,
@@ -43,6 +44,19 @@ def test_fractiles(name: str, low: float, median: float, high: float) -> None:
     assert marginal.ppf(0.05) == pytest.approx(low, rel=2e-4)
     assert marginal.ppf(0.50) == pytest.approx(median, rel=2e-4)
     assert marginal.ppf(0.95) == pytest.approx(high, rel=2e-4)
+
+
+@pytest.mark.published(source="fib Bulletin 34 (from memory)", place="annex B2, D_RCM,0")
+@pytest.mark.parametrize(("binder", "coefficient"), [("CEM I", 10.0), ("CEM III/B", 1.9)])
+def test_migration_coefficients_are_read_in_square_metres_per_second(
+    binder: str, coefficient: float
+) -> None:
+    name = f"chloride migration coefficient of {binder}, w/b 0.45"
+    marginal = DiffusionDistribution.model_validate({"catalogue": name}).marginal()
+    seconds = 365.25 * 86400.0  # 1e-12 m²/s is 31.5576 mm²/yr
+    assert marginal.mean == pytest.approx(coefficient * 1e-6 * seconds, rel=1e-5)
+    assert marginal.sd == pytest.approx(0.2 * marginal.mean, rel=1e-4)
+    assert marginal.support[0] == 0.0
 
 
 def test_an_unknown_name_is_refused_with_the_nearest() -> None:

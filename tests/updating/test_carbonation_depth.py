@@ -135,6 +135,22 @@ def test_likelihood_is_that_of_all_places_by_quadrature(rows, stage):
     assert found[1] - found[0] == pytest.approx(expected[1] - expected[0], rel=1e-6)
 
 
+def test_likelihood_compares_data_sets_too(rows):
+    # Other readings of the same design at the same parameters, at places alone and shared.
+    value = rows.value.copy()
+    value[[0, 5, 12]] = np.log([11.0, 35.0, 30.0])
+    other = KIND.observed(rows, value)
+    found = [KIND.log_likelihood(one, at(0), KIND.data(one, 2)) for one in (rows, other)]
+    expected = [reference(one, at(0), 2) for one in (rows, other)]
+    assert found[1] - found[0] == pytest.approx(expected[1] - expected[0], abs=1e-5)
+
+
+def test_a_depth_read_below_the_stated_limit_is_a_bound(make_case):
+    rows = KIND.rows(make_case(*raw("location,depth [mm]\nA,1.5\nB,2\nC,<1\nD,20\n")))
+    assert np.flatnonzero(bounds.is_below(rows.value)).tolist()[:2] == [0, 2]
+    np.testing.assert_allclose(np.exp(rows.extra["low"][:4]), [2.0, 2.0, 1.0, 2.0])
+
+
 @pytest.mark.parametrize("error", [1e-3, 0.01, 0.1, 1.0])
 @pytest.mark.parametrize("scatter", [0.05, 0.3, 1.0])
 def test_bounds_at_one_place_are_exact_whatever_the_error(make_case, error, scatter):

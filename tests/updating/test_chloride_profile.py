@@ -143,6 +143,13 @@ def test_rows_are_in_percent_of_binder_below_the_convection_depth(rows):
     np.testing.assert_allclose(rows.extra["initial"], 0.05)
 
 
+def test_a_content_read_below_the_stated_limit_is_a_bound(make_case):
+    table = HEAD + "W1,10,20,0.03\nW1,20,30,0.05\nW1,30,40,<0.02\n"
+    rows = KIND.rows(make_case(*raw(table, entry={"detection_limit": "0.04 %"})))
+    assert np.flatnonzero(bounds.is_below(rows.value)).tolist()[:2] == [0, 2]
+    np.testing.assert_allclose(rows.extra["limit"][:3], [0.04, 0.04, 0.02])
+
+
 def test_variables_are_two_scores_for_each_place_and_the_binder_content(case):
     names = [variable.name for variable in KIND.variables(case)]
     assert names == [*SCORES, "chloride_profile.deck.binder_content"]

@@ -174,6 +174,22 @@ def test_order_and_unit_of_rows_do_not_matter(rows, make_case):
     )
 
 
+def test_a_table_split_in_two_says_the_same(rows, make_case):
+    case, tables = raw()
+    lines = FIRST.strip().split("\n")
+    tables["a.csv"] = "\n".join(lines[:5]) + "\n"
+    tables["a2.csv"] = "\n".join([lines[0], *lines[5:]]) + "\n"
+    case["surveys"][0]["corrosion_current"] = [
+        dict(ENTRIES[0]), {**ENTRIES[0], "table": "a2.csv"}
+    ]  # fmt: skip
+    split = make_case(case, tables)
+    other = KIND.rows(split)
+    assert set(VALUES) <= set(joint_prior(split).names)  # one season for both tables
+    assert KIND.log_likelihood(other, at(1), KIND.data(other, 3)) == pytest.approx(
+        KIND.log_likelihood(rows, at(1), KIND.data(rows, 3)), rel=1e-10
+    )
+
+
 def test_graph_and_numbers_agree_and_gradients_are_finite(case, rows):
     graphs.check(KIND, rows, joint_prior(case), 3)
     graphs.check(KIND, rows, joint_prior(case), 1)

@@ -25,6 +25,7 @@ class Design:
     spoil: Spoil
     fault: str
     corrosion: bool = False
+    slow: bool = False  # run only where its group is asked for by name
     zone: Mapping[str, Any] = field(default_factory=dict)  # more keys of the zone ``deck``
     case: Mapping[str, Any] = field(default_factory=dict)  # more keys of the case
 

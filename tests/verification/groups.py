@@ -23,3 +23,10 @@ GROUPS: Mapping[str, Group] = {
         for design in DESIGNS
     },
 }
+
+# Calibrations that take many minutes: `python -m tests.verification WORDS` runs them.
+SLOW = frozenset(
+    f"Simulation-based calibration: {design.kind.replace('_', ' ')}"
+    for design in DESIGNS
+    if design.slow
+)

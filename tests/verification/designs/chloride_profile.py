@@ -80,4 +80,5 @@ DESIGN = Design(
     _scattered_increments,
     "increments of one profile that come from different places",
     zone={"chloride": _CHLORIDE},
+    slow=True,
 )

@@ -49,4 +49,5 @@ DESIGN = Design(
     _noisier_readings,
     "errors of readings three times as large as the model has them",
     corrosion=True,
+    slow=True,
 )

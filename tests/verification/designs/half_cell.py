@@ -42,4 +42,5 @@ DESIGN = Design(
     _older_structure,
     "a structure 1.6 times as old as the model has it",
     corrosion=True,
+    slow=True,
 )
