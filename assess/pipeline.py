@@ -1,9 +1,7 @@
 """Case to draws to reliability to decisions to report: what runs, in which order."""
 
-import os
 import time
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from concurrent.futures import Future, ThreadPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
@@ -13,6 +11,7 @@ from pathlib import Path
 from assess import store
 from assess.case.reader import Case, CaseReading, read_case
 from assess.case.spec import NamedTarget
+from assess.crew import Crew
 from assess.decisions.results import (
     Provenance,
     RunRecord,
@@ -21,7 +20,7 @@ from assess.decisions.results import (
 )
 from assess.decisions.sections import (
     Question,
-    gather,
+    Task,
     pasts_of,
     stage_results,
     used_variables,
@@ -196,13 +195,13 @@ def _sample_and_integrate(
     used = used_variables(case)
     last = len(case.stages)
     stages: list[StageDraws] = []
-    futures: list[Future[list[SectionResult]]] = []
-    with ThreadPoolExecutor(max_workers=min(4, os.cpu_count() or 1)) as executor:
+    tasks: list[Task[list[SectionResult]]] = []
+    with Crew(case, spec) as crew:
 
         def take(draws: StageDraws) -> None:
             stages.append(draws)
             final = draws.number == last and not case.spec.events
-            futures.extend(stage_results(case, spec, draws, question, executor, final=final))
+            tasks.extend(stage_results(case, draws, question, crew, final=final))
 
         with clock.measure("sampling"):
             kept = store.read_draws(options.out / store.DRAWS, key, used)
@@ -230,16 +229,15 @@ def _sample_and_integrate(
         with clock.measure("reliability"):
             if case.spec.events:
                 observe("weighing what has happened", 0.0)
-                pasts, weight = pasts_of(case, spec, stages[-1], question, executor)
+                pasts, weight = pasts_of(case, stages[-1], question, crew)
                 stages.append(reweighted(stages[-1], weight, EVENTS, settings.seed))
                 named = replace(stages[last], name=EVENTS)
-                futures.extend(
-                    stage_results(case, spec, named, question, executor, final=True, pasts=pasts)
-                )
-            results = []
-            for done, future in enumerate(futures):
-                observe("integrating the sections", done / len(futures))
-                results += list(gather([future]))
+                tasks.extend(stage_results(case, named, question, crew, final=True, pasts=pasts))
+            # The others begin with the first: this process helps from the last.
+            for done, task in enumerate(reversed(tasks)):
+                observe("integrating the sections", done / len(tasks))
+                task.begin_here()
+            results = [result for task in tasks for result in task.result()]
     return stages, results, sampler
 
 

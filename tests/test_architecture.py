@@ -22,6 +22,7 @@ FLOORS = (
     ("decisions",),
     ("report",),
     ("vocabulary", "store", "input_checks", "recording"),
+    ("crew",),
     ("pipeline", "starter", "terminal"),
     ("cli",),
 )

@@ -1,14 +1,13 @@
 """All sections of a case at one stage: reliability, verdicts, dependence dropped, options."""
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
-from concurrent.futures import Executor, Future
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
 from assess.case.events import Event
-from assess.case.forms import SectionEntry
 from assess.case.reader import Case
 from assess.decisions.options import LEAVE, OPTIONS
 from assess.decisions.results import SectionResult, Target, Verdict
@@ -37,6 +36,26 @@ from assess.updating.model import Spec
 from assess.updating.stages import StageDraws
 
 FloatArray = NDArray[np.float64]
+
+
+class Task[T](Protocol):
+    """Something under way."""
+
+    def begin_here(self) -> None:
+        """Do it in this process, unless another has it already."""
+        ...
+
+    def result(self) -> T:
+        """Wait for the result."""
+        ...
+
+
+class Crew(Protocol):
+    """Works on a case, in this process or in others."""
+
+    def submit[T](self, work: Callable[..., T], *arguments: Any, **named: Any) -> Task[T]:
+        """Set ``work(case, spec, *arguments, **named)`` going; ``work`` is a module's function."""
+        ...
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,26 +101,25 @@ def actions(case: Case, section: str) -> dict[str, Action | None]:
 
 def stage_results(
     case: Case,
-    spec: Spec,
     draws: StageDraws,
     question: Question,
-    executor: Executor,
+    crew: Crew,
     *,
     final: bool,
     pasts: Mapping[str, Past] | None = None,
-) -> list[Future[list[SectionResult]]]:
-    """Set all sections of a stage to work; each future gives one section's results.
+) -> list[Task[list[SectionResult]]]:
+    """Set all sections of a stage to work; each task gives one section's results.
 
     Parameters
     ----------
-    case, spec : Case, Spec
-        The case and its measurements.
+    case : Case
+        The case.
     draws : StageDraws
         State of knowledge.
     question : Question
         Target, precision, seed.
-    executor : Executor
-        Runs the sections; numbers do not depend on how many run at a time.
+    crew : Crew
+        Does the work; numbers do not depend on how much it does at a time.
     final : bool
         Whether this is the last stage, for which options are computed too.
     pasts : mapping of str to Past, optional
@@ -109,41 +127,51 @@ def stage_results(
 
     Returns
     -------
-    list of Future
+    list of Task
         In the order of the case's sections.
     """
-    values = draws.values()
+    known = Knowledge.of(draws)
     return [
-        executor.submit(
+        crew.submit(
             _section,
-            case,
-            spec,
-            entry,
-            draws,
-            values,
+            name,
+            known,
             question,
             final=final,
-            past=(pasts or {}).get(entry.name),
+            past=(pasts or {}).get(name),
         )
-        for entry in case.spec.sections().values()
+        for name in case.spec.sections()
     ]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Knowledge:
+    """What a section needs of a stage's draws."""
+
+    stage: str
+    surveys: int  # number of them that count
+    values: Mapping[str, FloatArray]  # each (n_draw,)
+
+    @staticmethod
+    def of(draws: StageDraws) -> "Knowledge":
+        """Take it from the draws."""
+        return Knowledge(draws.name, draws.number, draws.values())
 
 
 def _section(
     case: Case,
     spec: Spec,
-    entry: SectionEntry,
-    draws: StageDraws,
-    values: Mapping[str, FloatArray],
+    name: str,
+    known: Knowledge,
     question: Question,
     *,
     final: bool,
     past: Past | None = None,
 ) -> list[SectionResult]:
     """Give results of one section: `leave`, then at the last stage each option."""
-    state = section_state(case, spec, entry, draws.number, values)
+    state = _state(case, spec, name, known)
     left = _reliability(case, state, Action(), question, past=past)
-    results = [_result(case, state, draws.name, LEAVE, Action(), left, question, past)]
+    results = [_result(case, state, known.stage, LEAVE, Action(), left, question, past)]
     if past is None:  # a past ties the draws together: there is no dropping that
         torn = without_dependence(state, question.seed)
         dropped = _reliability(case, torn, Action(), question)
@@ -153,12 +181,12 @@ def _section(
             verdict_independent=_judge(dropped, question, results[0].verdict.governing),
         )
     if final:
-        for name, action in actions(case, entry.name).items():
+        for option, action in actions(case, name).items():
             if action is None:  # the option leaves this member as it is
                 results.append(
                     replace(
                         results[0],
-                        option=name,
+                        option=option,
                         independent=None,
                         verdict_independent=None,
                         evaluations=0,
@@ -168,8 +196,12 @@ def _section(
             # On the points of `leave`, unless these are too few for the option: what differs
             # between options is then not noise.
             found = _reliability(case, state, action, question, left.proposal, past)
-            results.append(_result(case, state, draws.name, name, action, found, question, past))
+            results.append(_result(case, state, known.stage, option, action, found, question, past))
     return results
+
+
+def _state(case: Case, spec: Spec, name: str, known: Knowledge) -> SectionState:
+    return section_state(case, spec, case.spec.sections()[name], known.surveys, known.values)
 
 
 def _reliability(
@@ -186,20 +218,20 @@ def _reliability(
 
 
 def pasts_of(
-    case: Case, spec: Spec, draws: StageDraws, question: Question, executor: Executor
+    case: Case, draws: StageDraws, question: Question, crew: Crew
 ) -> tuple[dict[str, Past], FloatArray]:
     """Work out what the events of all sections say of the draws.
 
     Parameters
     ----------
-    case, spec : Case, Spec
-        The case, with events, and its measurements.
+    case : Case
+        The case, with events.
     draws : StageDraws
         Last state of knowledge before the events count.
     question : Question
         Target, precision, seed.
-    executor : Executor
-        Runs the sections.
+    crew : Crew
+        Does the work.
 
     Returns
     -------
@@ -214,18 +246,12 @@ def pasts_of(
     weight is the product over sections of the probability of their past given the draw. A
     section's own past enters its integral point by point, not as a weight.
     """
-    values = draws.values()
+    known = Knowledge.of(draws)
     own: dict[str, tuple[Event, ...]] = {}
     for event in case.spec.events:
         own[event.section] = (*own.get(event.section, ()), event)
-    entries = case.spec.sections()
-
-    def survived(name: str) -> FloatArray:
-        state = section_state(case, spec, entries[name], draws.number, values)
-        found = _reliability(case, state, Action(), question, past=Past(own[name]))
-        return found.draw_weight
-
-    weights = dict(zip(own, executor.map(survived, own), strict=True))
+    tasks = {name: crew.submit(_survived, name, known, question, own[name]) for name in own}
+    weights = {name: task.result() for name, task in tasks.items()}
     whole = np.prod(list(weights.values()), axis=0)
     pasts = {
         name: Past(
@@ -233,9 +259,22 @@ def pasts_of(
             np.prod([w for other, w in weights.items() if other != name], axis=0)
             * np.ones_like(whole),
         )
-        for name in entries
+        for name in case.spec.sections()
     }
     return pasts, whole / whole.mean()
+
+
+def _survived(
+    case: Case,
+    spec: Spec,
+    name: str,
+    known: Knowledge,
+    question: Question,
+    events: tuple[Event, ...],
+) -> FloatArray:
+    """Weigh the draws by what has happened to one section."""
+    state = _state(case, spec, name, known)
+    return _reliability(case, state, Action(), question, past=Past(events)).draw_weight
 
 
 def _result(
@@ -305,9 +344,3 @@ def _note(found: SectionReliability, tolerance: float) -> str:
     if worst > tolerance:
         return f"integration error of the index {worst:.3f}, larger than the {tolerance:g} asked"
     return ""
-
-
-def gather(futures: Sequence[Future[list[SectionResult]]]) -> Iterator[SectionResult]:
-    """Wait for the sections of a stage in order."""
-    for future in futures:
-        yield from future.result()

@@ -29,6 +29,7 @@ FloatArray = NDArray[np.float64]
 
 RESISTANCE_MODEL = "concrete: bending"
 LOAD_EFFECT_MODEL = "load effect: moments in frames"
+FURTHEST = 37.0  # beyond it the normal probability cannot be represented
 MOST_PITS = 6  # pitting factors sampled per section; more bars share them in groups
 
 
@@ -110,7 +111,9 @@ def _pit_groups(count: int) -> FloatArray:
 
 def _gumbel(location: float, inverse_scale: float, z: FloatArray) -> FloatArray:
     """Map standard normals to a Gumbel maximum, accurate in both tails."""
-    return np.asarray(location - np.log(-special.log_ndtr(z)) / inverse_scale)
+    tail = special.ndtr(-np.minimum(np.abs(z), FURTHEST))
+    below = -np.where(z > 0.0, np.log1p(-tail), np.log(tail))  # -ln of the probability below
+    return np.asarray(location - np.log(below) / inverse_scale)
 
 
 def _load_words(entry: BendingSection) -> str:

@@ -429,7 +429,7 @@ def draw_sample(problem: Problem, proposal: Proposal, replicates: int) -> Sample
     count = len(proposal.centres)
     owner = np.repeat(np.arange(problem.draws), proposal.points)
     # One sequence for each centre: dealt out by turns, a single one would alias with its bits.
-    z = normal_points(problem.dimension, len(owner), proposal.seed, replicates * count)
+    z = normal_points(problem.dimension, len(owner), proposal.seed, replicates * count).copy()
     z = z.reshape(replicates, count, len(owner), problem.dimension)
     for number, centre in enumerate(proposal.centres):
         z[:, number] += centre[owner]
@@ -461,21 +461,23 @@ def draw_sample(problem: Problem, proposal: Proposal, replicates: int) -> Sample
     return Sample(owner, z, weight, hazard, survival, problem.weights, problem.draws, hazard.size)
 
 
-@lru_cache(maxsize=2)
-def _uniform_points(dimension: int, count: int, seed: int, replicates: int) -> FloatArray:
-    """Scrambled Sobol points, (replicates, count, dimension)."""
-    size = 1 << max(0, int(np.ceil(np.log2(count))))
-    seeds = np.random.SeedSequence(seed).spawn(replicates)
-    return np.stack(
-        [
-            qmc.Sobol(dimension, scramble=True, rng=np.random.default_rng(s)).random(size)[:count]
-            for s in seeds
-        ]
-    )
+@lru_cache(maxsize=4)
+def _whole_sequence(dimension: int, power: int, seed: int, replicates: int) -> FloatArray:
+    """First 2^power scrambled Sobol points as standard normals, to be read only."""
+    uniform = np.empty((replicates, 1 << power, dimension))
+    for points, state in zip(uniform, np.random.SeedSequence(seed).spawn(replicates), strict=True):
+        sobol = qmc.Sobol(dimension, scramble=True, rng=np.random.default_rng(state))
+        points[:] = sobol.random(1 << power)
+    # Scrambled points may touch 0; half a grain of the sequence keeps them off it.
+    normal = special.ndtri(np.clip(uniform, 1e-12, 1.0 - 1e-12, out=uniform), out=uniform)
+    normal.flags.writeable = False
+    return np.asarray(normal)
 
 
 def normal_points(dimension: int, count: int, seed: int, replicates: int = 1) -> FloatArray:
-    """Scrambled Sobol points mapped to standard normals, (replicates, count, dimension)."""
-    uniform = _uniform_points(dimension, count, seed, replicates)
-    # Scrambled points may touch 0; half a grain of the sequence keeps them off it.
-    return np.asarray(special.ndtri(np.clip(uniform, 1e-12, 1.0 - 1e-12)))
+    """Scrambled Sobol points mapped to standard normals, (replicates, count, dimension).
+
+    The array is a view of one that others share: it can be read only.
+    """
+    power = max(0, int(np.ceil(np.log2(count))))
+    return _whole_sequence(dimension, power, seed, replicates)[:, :count]

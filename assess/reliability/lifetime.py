@@ -19,6 +19,7 @@ FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
 
 REPLICATES = 8
+CLEAR = 4.0
 FIRST_POINTS = 1.25  # per draw, replicate and centre, on average, in the first pass
 MOST_ELEMENTS = 16_000_000  # hazards held at a time: replicates, centres, points, years
 
@@ -54,8 +55,13 @@ class Probabilities:
         """Quantile over the draws of the index given the draw, shape (n_window,)."""
         # Weights average to 1 only in the mean, so a near certain failure may come out above 1.
         bounded = np.minimum(self.conditional, 1.0)
+        alike = np.ptp(self.draw_weight) == 0.0  # then selecting does, without sorting
         quantile = np.quantile(
-            bounded, 1.0 - share, axis=0, method="inverted_cdf", weights=self.draw_weight
+            bounded,
+            1.0 - share,
+            axis=0,
+            method="inverted_cdf",
+            weights=None if alike else self.draw_weight,
         )
         return np.asarray(index_from_probability(quantile))
 
@@ -197,7 +203,8 @@ def integrate(
     Each pass shares twice as many points out among the draws as the pass before, by what that
     one found each draw to contribute; it takes points of its own, so that where they lie does
     not depend on what they find. A pass whose replicates agree by chance must not end the search:
-    the error of the pass before, over the root of two, counts where it is larger.
+    the error of the pass before, over the root of two, counts where it is larger, unless this
+    pass is better than asked by a factor (`CLEAR`) that chance does not give.
     """
     spent = 0
     before = np.zeros(problem.years)
@@ -208,8 +215,9 @@ def integrate(
         sample = draw_sample(problem, proposal, REPLICATES)
         spent += sample.evaluations
         annual = probabilities(sample, first, last, chains)
-        stated = np.maximum(annual.integration_error, before / np.sqrt(2.0))
-        annual, before = replace(annual, integration_error=stated), stated
+        own = annual.integration_error
+        stated = np.where(own < tolerance / CLEAR, own, np.maximum(own, before / np.sqrt(2.0)))
+        annual, before = replace(annual, integration_error=stated), own
         # Where failure is more likely than not, the third digit of a negative index decides
         # nothing; its error is reported all the same.
         open_question = annual.index > 0.0

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import optimize
 
 from assess.case.events import Event
 from assess.case.reader import Case
@@ -20,6 +21,7 @@ IntArray = NDArray[np.int64]
 
 REFINEMENTS = 4  # integrals for a load factor that leads far from today's load
 NEARBY = 0.15  # step of ln(load factor) over which one sample serves
+LEAST_FACTOR, MOST_FACTOR = 0.02, 5.0  # load factors that are looked for
 BAND = (0.05, 0.95)  # quantiles of the index conditional on the draw
 
 
@@ -184,8 +186,8 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
     -----
     A maximum scaled by f has location f u and scale f b, so that a capacity of q/b scales of
     today's load lies :math:`q/(b f) - u/b` of the scales above its location then. The same weighted
-    sample serves all factors (common random numbers); bisection on ln f. The points were laid for
-    one load: far from it the factor is rough, see `solve_load_factor`.
+    sample serves all factors (common random numbers); Brent's method on ln f. The points were laid
+    for one load: far from it the factor is rough, see `solve_load_factor`.
     """
     sample = found.sample
     weight = sample.given_past()
@@ -201,22 +203,18 @@ def load_factor(found: SectionReliability, target_probability: float, period: in
     above = reduced if gumbel else standard_value(reduced, shape)
     capacity = ratio + above  # over the scale of today's load
 
-    def probability(log_factor: float) -> float:
+    def excess(log_factor: float) -> float:
+        """Logarithm of the failure probability over the one allowed: nearly straight."""
         under = capacity / np.exp(log_factor) - ratio
         under = under if gumbel else reduced_variate(under, shape)
         scaled = np.exp(np.minimum(-under, 700.0)).sum(axis=-1)
-        return float(np.sum(weight * -np.expm1(-scaled)) / len(weight))
+        probability = float(np.sum(weight * -np.expm1(-scaled)) / len(weight))
+        return float(np.log(max(probability, 1e-300) / target_probability))
 
-    low, high = np.log(0.02), np.log(5.0)
-    if probability(low) > target_probability or probability(high) < target_probability:
+    low, high = np.log(LEAST_FACTOR), np.log(MOST_FACTOR)
+    if excess(low) > 0.0 or excess(high) < 0.0:
         return None
-    for _ in range(30):
-        middle = 0.5 * (low + high)
-        if probability(middle) > target_probability:
-            high = middle
-        else:
-            low = middle
-    return float(np.exp(low))
+    return float(np.exp(optimize.brentq(excess, low, high, xtol=1e-6)))
 
 
 def solve_load_factor(

@@ -144,12 +144,7 @@ def kind_weights(
     for key, rows in spec.rows.items():
         kind = KINDS[key]
         data = kind.data(rows, draws.number)
-        log_likelihood = np.array(
-            [
-                float(kind.log_likelihood(rows, {n: v[i] for n, v in values.items()}, data))
-                for i in range(len(chosen))
-            ]
-        )
+        log_likelihood = np.asarray(kind.log_likelihood(rows, values, data), dtype=np.float64)
         smoothed, shape = array_stats.psislw(-log_likelihood)
         found[key] = np.exp(smoothed - smoothed.max()) if float(shape) <= WORST_SHAPE else None
     return chosen, found

@@ -197,7 +197,7 @@ class Cores(EvidenceKind):
             weighted @ by_place,
             (weighted * residual) @ by_place,
             variance[..., rows.place_zone],
-        ).sum()
+        ).sum(axis=-1)
 
     def simulate(
         self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator

@@ -261,22 +261,24 @@ class CorrosionCurrent(EvidenceKind):
     ) -> Numeric:
         """Log-likelihood of all active readings, onsets and local currents integrated out."""
         centre, score = _centre(rows, values), _score(rows, values)
-        variance = zone_values(rows, values, "current_scatter")[rows.zone] ** 2
+        variance = zone_values(rows, values, "current_scatter")[..., rows.zone] ** 2
         _, first = _groups(rows)
-        total = variance[first] + rows.extra["variance"][first]
+        total = variance[..., first] + rows.extra["variance"][first]
         count, mean = data["corrosion_current_count"], data["corrosion_current_mean"]
-        deviation = mean - centre[first]
-        low = op.normal_cdf((rows.extra["limit"][first] - centre[first]) / op.sqrt(total))
-        passive_or_low = op.normal_cdf(-score[first]) + op.normal_cdf(score[first]) * low
+        deviation = mean - centre[..., first]
+        low = op.normal_cdf((rows.extra["limit"][first] - centre[..., first]) / op.sqrt(total))
+        passive_or_low = op.normal_cdf(-score[..., first]) + op.normal_cdf(score[..., first]) * low
         result = (
-            count * (op.log_normal_cdf(score[first]) - 0.5 * op.log(total))
+            count * (op.log_normal_cdf(score[..., first]) - 0.5 * op.log(total))
             - 0.5 * (count * deviation**2 + data["corrosion_current_square"]) / total
             + data["corrosion_current_low"] * op.log(op.maximum(passive_or_low, LEAST))
-        ).sum()
+        ).sum(axis=-1)
         shared = ~_single(rows)
         if shared.any():
             readings = Readings.from_data(data, rows, shared)
-            result = result + current_places.log_likelihood(readings, centre, variance, score).sum()
+            result = result + current_places.log_likelihood(readings, centre, variance, score).sum(
+                axis=-1
+            )
         return result
 
     def simulate(

@@ -175,8 +175,8 @@ def rate_given_onset(seen: Places, zone: Population, log_age: Sequence[Numeric])
         # what a visit does not bound is shifted out of reach.
         idle_found = OFF * (1.0 - seen.found[:, k, None])
         idle_none = OFF * (1.0 - seen.none[:, k, None])
-        lower = op.maximum(lower, seen.limit[:, k, None] - idle_found - log_years)
-        upper = op.minimum(upper, seen.limit[:, k, None] + idle_none - log_years)
+        lower = op.maximum(lower, seen.limit[..., k, None] - idle_found - log_years)
+        upper = op.minimum(upper, seen.limit[..., k, None] + idle_none - log_years)
     variance = zone.rate_scatter**2
     mean, sd = nested.local_posterior(precision, weighted, zone.log_rate, variance)
     low, high = (lower - mean) / sd, (upper - mean) / sd
@@ -245,10 +245,10 @@ def log_likelihood(seen: Places, zone: Population) -> Numeric:
         start = end
     peak: Numeric = -500.0
     for log_density, _ in stretches:
-        peak = op.maximum(peak, log_density.max(axis=1))
+        peak = op.maximum(peak, log_density.max(axis=-1))
     found = seen.found.max(axis=1)
     known = op.maximum(found, seen.none.max(axis=1))
-    total = (1.0 - found) * op.normal_cdf(-score_last)[:, 0] * op.exp(-peak)
+    total = (1.0 - found) * op.normal_cdf(-score_last)[..., 0] * op.exp(-peak)
     for log_density, weight_here in stretches:
-        total = total + (op.exp(log_density - peak[:, None]) * weight_here).sum(axis=1)
+        total = total + (op.exp(log_density - peak[..., None]) * weight_here).sum(axis=-1)
     return op.where(known > 0.0, peak + op.log(op.maximum(total, LEAST)), 0.0)

@@ -219,11 +219,11 @@ class Cover(EvidenceKind):
             data["cover_count"] * (op.log(total) + (data["cover_mean"] - centre) ** 2 / total)
             + data["cover_square"] / total
         )
-        result = single.sum()
+        result = single.sum(axis=-1)
         limits, limit_group = _limits(rows, groups)
         if len(limits):
             excess = (centre[..., limit_group] - limits) / op.sqrt(total[..., limit_group])
-            result = result + (data["cover_censored"] * op.log_normal_cdf(excess)).sum()
+            result = result + (data["cover_censored"] * op.log_normal_cdf(excess)).sum(axis=-1)
         chosen = ~self._single(rows)
         if chosen.any():
             zone_of = rows.zone[chosen]
@@ -235,15 +235,12 @@ class Cover(EvidenceKind):
             weighted = data["cover_shared_precision"] * residual
             shared, place = np.unique(rows.place[chosen], return_inverse=True)
             by_place = membership(place.astype(np.int64), len(shared)).T
-            result = (
-                result
-                + nested_log_likelihood(
-                    data["cover_shared_precision"] @ by_place,
-                    weighted @ by_place,
-                    (weighted * residual) @ by_place,
-                    variance[..., rows.place_zone[shared]],
-                ).sum()
-            )
+            result = result + nested_log_likelihood(
+                data["cover_shared_precision"] @ by_place,
+                weighted @ by_place,
+                (weighted * residual) @ by_place,
+                variance[..., rows.place_zone[shared]],
+            ).sum(axis=-1)
         return result
 
     def simulate(

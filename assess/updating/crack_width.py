@@ -191,7 +191,7 @@ class CrackWidth(EvidenceKind):
         return history.log_likelihood(
             Places.from_data(arrays, history.count_visits(rows)),
             Population(*(part[..., zone, None] for part in population)),
-        ).sum()
+        ).sum(axis=-1)
 
     def simulate(
         self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator

@@ -117,30 +117,32 @@ def log_likelihood(
        Rev. 56 (2014) 385-458.
     """
     visits = readings.row.shape[1]
-    here, local_variance = centre[readings.row], variance[readings.row[:, 0]]
+    here, local_variance = centre[..., readings.row], variance[..., readings.row[:, 0]]
     residual = readings.value - here
     precision = readings.precision.sum(axis=1)
     weighted = readings.precision * residual
-    weighted_sum = weighted.sum(axis=1)
+    weighted_sum = weighted.sum(axis=-1)
     density = nested_log_likelihood(
-        precision, weighted_sum, (weighted * residual).sum(axis=1), local_variance
+        precision, weighted_sum, (weighted * residual).sum(axis=-1), local_variance
     )
     mean, sd = local_posterior(precision, weighted_sum, 0.0, local_variance)
-    local = mean[:, None] + sd[:, None] * SCORES
+    local = mean[..., None] + sd[..., None] * SCORES
     # From the latest interval of the onset to the earliest: each adds one visit to the active.
-    at = [score[readings.row[:, k]] for k in range(visits)]
+    at = [score[..., readings.row[:, k]] for k in range(visits)]
     terms = [op.log_normal_cdf(-at[-1]) - _blocked(readings, visits)]
     low: Numeric = WEIGHTS
     for k in reversed(range(visits)):
-        bound = (readings.limit[:, k, None] - here[:, k, None] - local) / readings.error[:, k, None]
+        bound = (readings.limit[:, k, None] - here[..., k, None] - local) / readings.error[
+            :, k, None
+        ]
         counts = readings.low[:, k, None]
         low = low * (counts * op.normal_cdf(bound) + (1.0 - counts))
         inside = op.log_normal_cdf(at[0]) if k == 0 else _log_between(at[k - 1], at[k])
-        all_low = op.log(op.maximum(low.sum(axis=1), LEAST))
+        all_low = op.log(op.maximum(low.sum(axis=-1), LEAST))
         terms.append(inside - _blocked(readings, k) + all_low)
     stacked = op.stack_last(terms)
-    peak = stacked.max(axis=1)
-    total = peak + op.log(op.exp(stacked - peak[:, None]).sum(axis=1))
+    peak = stacked.max(axis=-1)
+    total = peak + op.log(op.exp(stacked - peak[..., None]).sum(axis=-1))
     known = precision + readings.low.sum(axis=1)
     return op.where(known > 0.0, density + total, 0.0)
 

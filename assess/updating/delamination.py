@@ -158,8 +158,8 @@ class Delamination(EvidenceKind):
             Population(*(part[..., zone, None] for part in population)),
         )
         count = len(rows.zone)
-        grown = data["delamination_grown"] * both[:count]
-        return (grown + data["delamination_sound"] * both[count:]).sum()
+        grown = data["delamination_grown"] * both[..., :count]
+        return (grown + data["delamination_sound"] * both[..., count:]).sum(axis=-1)
 
     def simulate(
         self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator
@@ -247,6 +247,6 @@ def _patches(rows: Rows, log_critical: Numeric) -> Places:
         none=none,
         log_loss=nothing,
         precision=nothing,
-        limit=nothing + log_critical,
+        limit=nothing + log_critical[..., None, None],
         visits=2,
     )

@@ -78,7 +78,22 @@ class EvidenceKind(ABC):
     def log_likelihood(
         self, rows: Rows, values: Mapping[str, Numeric], data: Mapping[str, Numeric]
     ) -> Numeric:
-        """Log-likelihood (scalar) as a graph, given common variables and the data's graph."""
+        """Log-likelihood of all active rows together, as a graph or as numbers.
+
+        Parameters
+        ----------
+        rows : Rows
+            All rows.
+        values : mapping
+            Common variables by name: scalars of the graph, or draws of shape (n_draw,).
+        data : mapping
+            From `data`, as the graph's variables or as arrays.
+
+        Returns
+        -------
+        numeric
+            A scalar of the graph, or shape (n_draw,).
+        """
 
     @abstractmethod
     def simulate(

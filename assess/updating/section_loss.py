@@ -197,7 +197,7 @@ class SectionLoss(EvidenceKind):
         return history.log_likelihood(
             Places.from_data(data, history.count_visits(rows)),
             Population(*(part[..., zone, None] for part in population)),
-        ).sum()
+        ).sum(axis=-1)
 
     def _population(self, rows: Rows, values: Mapping[str, Numeric]) -> Population:
         return history.population(
