@@ -267,8 +267,8 @@ class Bending(LimitState):
         corrosion = spec.zones[entry.zone].corrosion
         if corrosion is not None:
             said.append(
-                "All tension bars of a section start to corrode together and at one current; by "
-                "Faraday's law. "
+                f"Zone {entry.zone}: all tension bars of a section start to corrode together and "
+                "at one current; by Faraday's law. "
                 + (
                     "Each bar has its own largest pit (Gumbel factor after Stewart 2004, pit "
                     "geometry after Val and Melchers 1997)."
