@@ -137,7 +137,7 @@ def _data_record(case: Case, item: DataSet, stages: Sequence[StageDraws]) -> Dat
         absent=item.missing if absent else 0,
         sections=item.sections,
         path=", ".join(_files(case, item, stage.name)),
-        variable=f"{item.zone}.{item.kind.carrier}",
+        variable=".".join(filter(None, (item.zone, item.kind.carrier))),
         predictive=item.predictive,
         p_values=item.p_values,
     )

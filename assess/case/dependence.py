@@ -41,15 +41,21 @@ def known_variables(data: Mapping[Any, Any]) -> dict[str, Keys]:
     Returns
     -------
     dict
-        Place of the zone or steel by the variable's full name, such as ``deck.onset``.
+        Place of the zone, steel or quantity by the variable's full name, such as ``deck.onset``.
     """
     found: dict[str, Keys] = {}
     for name in mapping_at(data, "zones"):
         zone = mapping_at(data, "zones", name)
         for variable in Zone.variable_names([key for key in PROCESSES if zone.get(key)]):
             found[f"{name}.{variable}"] = ("zones", name)
-    for name in mapping_at(data, "steel"):
+    for name, steel in mapping_at(data, "steel").items():
         found[f"steel.{name}"] = ("steel", name)
+        if isinstance(steel, dict) and isinstance(steel.get("local_sd"), dict):
+            found[f"steel.{name}.scatter"] = ("steel", name)
+    for name, quantity in mapping_at(data, "quantities").items():
+        found[f"quantity.{name}"] = ("quantities", name)
+        if isinstance(quantity, dict) and quantity.get("scatter"):
+            found[f"quantity.{name}.scatter"] = ("quantities", name)
     return found
 
 

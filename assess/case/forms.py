@@ -42,12 +42,43 @@ class EvidenceEntry(Closed):
     zone: str | None = None  # of every row, unless the table has a `zone` column
 
 
+@dataclass(frozen=True, slots=True)
+class Dimension:
+    """A dimension of a section as the case states it [mm]."""
+
+    nominal: float
+    sd: float | None = None  # of built less nominal; None: the published one
+
+
+@dataclass(frozen=True, slots=True)
+class StatedBars:
+    """Bars of a section as the case states them."""
+
+    count: int
+    diameter: float  # of the sound bars [mm]
+
+
 class SectionEntry(Closed):
-    """What is said of one section, beside what its limit state adds."""
+    """What is said of one section, beside what its limit state adds.
+
+    A limit state's entry tells by the methods what a survey may find at the section.
+    """
 
     name: str
     zone: str
     limit_state: str
+
+    def steels(self) -> tuple[str, ...]:
+        """Name the reinforcements that the section uses."""
+        return ()
+
+    def dimensions(self) -> Mapping[str, Dimension]:
+        """Give the dimensions that may be measured, by name."""
+        return {}
+
+    def stated_bars(self) -> StatedBars | None:
+        """Give the bars that may be looked for."""
+        return None
 
 
 class OptionEntry(Closed):

@@ -9,12 +9,13 @@ from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Annotated, ClassVar, Literal
 
-from pydantic import AfterValidator, Field
+from pydantic import AfterValidator, Field, model_validator
 
 from assess.case.distributions import (
     CurrentDistribution,
     DiffusionDistribution,
     Distribution,
+    LengthDistribution,
     NumberDistribution,
     RootTimeDistribution,
     YearsDistribution,
@@ -70,9 +71,11 @@ class Process(Closed):
     meanings: ClassVar[Mapping[str, Meaning]]
 
     def priors(self) -> Iterator[tuple[str, Meaning, Distribution]]:
-        """Go through name, meaning and prior of the variables."""
+        """Go through name, meaning and prior of the variables that are stated."""
         for name, meaning in self.meanings.items():
-            yield name, meaning, getattr(self, name)
+            prior = getattr(self, name)
+            if prior is not None:
+                yield name, meaning, prior
 
 
 class Corrosion(Process):
@@ -170,7 +173,81 @@ class Carbonation(Process):
     )
 
 
+class DeviationDistribution(Distribution):
+    """A distribution of a built dimension less its nominal value [mm]; it may be below zero."""
+
+    unit = "mm"
+
+
+MEASURED_DIMENSIONS = ("depth", "width", "flange thickness")
+
+
+def dimension_key(dimension: str) -> str:
+    """Give the name of a dimension within those of variables: ``flange_thickness``."""
+    return dimension.replace(" ", "_")
+
+
+def _dimension_meanings() -> Mapping[str, Meaning]:
+    found = {}
+    for name in MEASURED_DIMENSIONS:
+        key, what = dimension_key(name), "flange thicknesses" if "flange" in name else f"{name}s"
+        found[f"{key}_deviation"] = Meaning(
+            f"mean of built less nominal {what}", "$\\Delta$", DeviationDistribution
+        )
+        found[f"{key}_scatter"] = Meaning(
+            f"scatter of built less nominal {what}", "$\\sigma_\\Delta$", LengthDistribution
+        )
+    return MappingProxyType(found)
+
+
+_Scatter = Annotated[LengthDistribution, AfterValidator(only_positive)]
+
+
+class Dimensions(Process):
+    """How the built dimensions of a zone stray from the drawings, where readings may tell."""
+
+    meanings = _dimension_meanings()
+
+    depth_deviation: DeviationDistribution | None = Field(
+        None, description="mean of built less nominal depths in the zone, as uncertain"
+    )
+    depth_scatter: _Scatter | None = Field(
+        None, description="standard deviation of built less nominal depths from place to place"
+    )
+    width_deviation: DeviationDistribution | None = Field(
+        None, description="mean of built less nominal widths in the zone, as uncertain"
+    )
+    width_scatter: _Scatter | None = Field(
+        None, description="standard deviation of built less nominal widths from place to place"
+    )
+    flange_thickness_deviation: DeviationDistribution | None = Field(
+        None, description="mean of built less nominal flange thicknesses in the zone, as uncertain"
+    )
+    flange_thickness_scatter: _Scatter | None = Field(
+        None,
+        description="standard deviation of built less nominal flange thicknesses from place to "
+        "place",
+    )
+
+    @model_validator(mode="after")
+    def _pairs(self) -> "Dimensions":
+        stated = {name for name, _, _ in self.priors()}
+        for name in MEASURED_DIMENSIONS:
+            pair = {f"{dimension_key(name)}_{part}" for part in ("deviation", "scatter")}
+            if len(pair & stated) == 1:
+                what = f"the {name} has {min(pair & stated)} without {min(pair - stated)}"
+                raise QuantityError(what, mend="state both or neither")
+        if not stated:
+            raise QuantityError("no dimension is stated", allowed="such as depth_deviation")
+        return self
+
+
 # Under a zone, by key. One line each.
 PROCESSES: Mapping[str, type[Process]] = MappingProxyType(
-    {"corrosion": Corrosion, "chloride": Chloride, "carbonation": Carbonation}
+    {
+        "corrosion": Corrosion,
+        "chloride": Chloride,
+        "carbonation": Carbonation,
+        "dimensions": Dimensions,
+    }
 )

@@ -19,15 +19,21 @@ from pydantic import (
     model_validator,
 )
 
-from assess.case.distributions import LengthDistribution, NumberDistribution
+from assess.case.distributions import (
+    LengthDistribution,
+    NumberDistribution,
+    StressDistribution,
+)
 from assess.case.events import Event
 from assess.case.forms import Closed, EvidenceEntry, OptionEntry, SectionEntry
 from assess.case.load_models import AnyLoadModel
+from assess.case.load_quantities import AnyQuantity, Undotted
 from assess.case.processes import (
     PROCESSES,
     Carbonation,
     Chloride,
     Corrosion,
+    Dimensions,
     Process,
     only_positive,
     within_one,
@@ -200,6 +206,11 @@ class Zone(Closed):
     corrosion: Corrosion | None = Field(None, description="left out: the zone stays sound")
     chloride: Chloride | None = Field(None, description="how chlorides enter; for profiles")
     carbonation: Carbonation | None = Field(None, description="how carbonation goes in")
+    dimensions: Dimensions | None = Field(
+        None,
+        description="how built dimensions stray in the zone; left out: JCSS part 3.10, each "
+        "section by itself",
+    )
     description: str | None = Field(None, description="where the zone is")
 
     @staticmethod
@@ -215,7 +226,12 @@ class Zone(Closed):
 
     def variables(self) -> tuple[str, ...]:
         """Name this zone's common variables."""
-        return self.variable_names(self.processes())
+        stated = (name for one in self.processes().values() for name, _, _ in one.priors())
+        return (*self.variable_names(()), *stated)
+
+
+def _number_or_distribution(value: Any) -> str:
+    return "uncertain" if isinstance(value, dict | StressDistribution) else "known"
 
 
 class Steel(Closed):
@@ -223,7 +239,14 @@ class Steel(Closed):
 
     mean: YieldStrength = Field(description="mean yield strength")
     sd: Stress = Field(description="standard deviation of that mean: its level is uncertain")
-    local_sd: Stress = Field(8.0, description="standard deviation from bar to bar")
+    local_sd: Annotated[
+        Annotated[Stress, Tag("known")]
+        | Annotated[StressDistribution, AfterValidator(only_positive), Tag("uncertain")],
+        Discriminator(_number_or_distribution),
+    ] = Field(
+        8.0,
+        description="standard deviation from bar to bar; or its distribution, for coupons to tell",
+    )
     source: Text = Field(description="where the yield strength comes from")
 
 
@@ -371,6 +394,10 @@ class CaseSpec(Closed):
     steel: dict[Text, Steel] = Field({}, description="reinforcement by name")
     load_models: dict[Text, AnyLoadModel] = Field(
         {}, description="variable loads whose yearly maxima are uncertain, by name"
+    )
+    quantities: dict[Undotted, AnyQuantity] = Field(
+        {},
+        description="densities and thicknesses that permanent loads are proportional to, by name",
     )
     surveys: tuple[Survey, ...] = Field((), description="visits with their measurements")
     members: tuple[Member, ...] = Field(min_length=1, description="members to check")

@@ -8,7 +8,14 @@ from numpy.typing import NDArray
 from pydantic import Field
 from scipy import special
 
-from assess.case.forms import Closed, Complaint, LimitStateForm, SectionEntry
+from assess.case.forms import (
+    Closed,
+    Complaint,
+    Dimension,
+    LimitStateForm,
+    SectionEntry,
+    StatedBars,
+)
 from assess.case.quantities import CoefficientOfVariation, InUnit, Length, PositiveNumber
 from assess.case.spec import CaseSpec, NominalCover, Whole
 from assess.mechanics.bending import bending_resistance
@@ -21,14 +28,22 @@ from assess.mechanics.corrosion import (
 )
 from assess.mechanics.dimensions import dimension_deviation, effective_depth
 from assess.mechanics.model_uncertainty import model_uncertainty
-from assess.reliability.bending_faults import Shape, impossible_load, impossible_shape
+from assess.reliability.bending_faults import (
+    Shape,
+    impossible_load,
+    impossible_shape,
+    twice_stated,
+    unknown_quantities,
+)
 from assess.reliability.limit_state import AnnualMaximum, LimitState, Surroundings
 from assess.reliability.loads import Loads, permanent_effect
 
 FloatArray = NDArray[np.float64]
+Built = FloatArray | float  # a dimension, uncertain or not
 
 RESISTANCE_MODEL = "concrete: bending"
 LOAD_EFFECT_MODEL = "load effect: moments in frames"
+LEAST_BUILT = 1.0  # [mm] a normal deviation reaches below nothing; far from any built dimension
 FURTHEST = 37.0  # beyond it the normal probability cannot be represented
 MOST_PITS = 6  # pitting factors sampled per section; more bars share them in groups
 
@@ -88,6 +103,21 @@ class BendingSection(SectionEntry):
         None, description="factor on all load effects; left out: JCSS part 3.9, moments in frames"
     )
 
+    def steels(self) -> tuple[str, ...]:
+        """Name the reinforcement of the section."""
+        return (self.bars.steel,)
+
+    def dimensions(self) -> Mapping[str, Dimension]:
+        """Give depth and width, and the thickness of a flange."""
+        found = {"depth": Dimension(self.depth, self.depth_sd), "width": Dimension(self.width)}
+        if self.flange is not None:
+            found["flange thickness"] = Dimension(self.flange.thickness)
+        return found
+
+    def stated_bars(self) -> StatedBars:
+        """Give the tension bars."""
+        return StatedBars(self.bars.count, self.bars.diameter)
+
 
 def _factor(stated: Factor | None, name: str) -> Factor:
     """Take the stated model factor, else the published one."""
@@ -109,11 +139,43 @@ def _pit_groups(count: int) -> FloatArray:
     return np.array([len(part) for part in np.array_split(np.arange(count), groups)], dtype=float)
 
 
-def _gumbel(location: float, inverse_scale: float, z: FloatArray) -> FloatArray:
+def _gumbel(location: FloatArray, inverse_scale: FloatArray, z: FloatArray) -> FloatArray:
     """Map standard normals to a Gumbel maximum, accurate in both tails."""
     tail = special.ndtr(-np.minimum(np.abs(z), FURTHEST))
     below = -np.where(z > 0.0, np.log1p(-tail), np.log(tail))  # -ln of the probability below
     return np.asarray(location - np.log(below) / inverse_scale)
+
+
+def _yield_strength(entry: BendingSection, spec: CaseSpec, here: Surroundings) -> FloatArray:
+    """Yield strength of the section's bars [MPa]."""
+    if "yield strength" in here.local:  # a coupon or hardness was taken here
+        return here.local["yield strength"]
+    name, scatter = entry.bars.steel, spec.steel[entry.bars.steel].local_sd
+    sd = scatter if isinstance(scatter, float) else here.common[f"steel.{name}.scatter"]
+    return here.common[f"steel.{name}"] + sd * here.chance["yield strength"]
+
+
+def _depth(entry: BendingSection, here: Surroundings) -> FloatArray:
+    """Depth as built [mm]."""
+    if "depth deviation" in here.local:
+        return entry.depth + here.local["depth deviation"]
+    if entry.depth_sd is not None:
+        return entry.depth + entry.depth_sd * here.chance["depth deviation"]
+    deviation = dimension_deviation(entry.depth)
+    return entry.depth + deviation.mean + deviation.sd * here.chance["depth deviation"]
+
+
+def _outline(entry: BendingSection, here: Surroundings) -> tuple[Built, Built | None, Built | None]:
+    """Width of the web, width and thickness of the flange [mm]: nominal where nothing is known."""
+    width: Built = entry.width
+    if "width deviation" in here.local:
+        width = np.maximum(width + here.local["width deviation"], LEAST_BUILT)
+    if entry.flange is None:
+        return width, None, None
+    thickness: Built = entry.flange.thickness
+    if "flange thickness deviation" in here.local:
+        thickness = np.maximum(thickness + here.local["flange thickness deviation"], LEAST_BUILT)
+    return width, np.maximum(entry.flange.width, width), thickness
 
 
 def _load_words(entry: BendingSection) -> str:
@@ -156,14 +218,19 @@ class Bending(LimitState):
             entry.bars.diameter,
             entry.bars.spread or entry.width,
         )
-        return [*impossible_shape(shape, nominal), *impossible_load(entry.loads, spec)]
+        return [
+            *impossible_shape(shape, nominal),
+            *impossible_load(entry.loads, spec),
+            *unknown_quantities(entry.loads, spec),
+            *twice_stated(entry.depth_sd, spec.zones[entry.zone]),
+        ]
 
     def chances(self, entry: BendingSection) -> Mapping[str, str]:
         """Name the section's own standard normals with their groups."""
         pits = {f"pitting {k + 1}": "pitting" for k in range(len(_pit_groups(entry.bars.count)))}
         return {
             "yield strength": "steel strength",
-            "depth": "cover and depth",
+            "depth deviation": "cover and depth",
             "resistance model": "resistance model",
             "load effect model": "load effect model",
             "permanent load": "permanent load",
@@ -172,64 +239,69 @@ class Bending(LimitState):
 
     def steels(self, entry: BendingSection) -> tuple[str, ...]:
         """Name the reinforcement of the section."""
-        return (entry.bars.steel,)
+        return entry.steels()
+
+    def quantities(self, entry: BendingSection) -> tuple[str, ...]:
+        """Name the quantities that permanent loads are proportional to."""
+        return tuple(
+            dict.fromkeys(name for load in entry.loads.permanent for name in load.proportional_to)
+        )
 
     def load_capacity(
         self, entry: BendingSection, spec: CaseSpec, here: Surroundings
     ) -> FloatArray:
         """Variable moment that uses the section up, (n, k, n_year) [N·mm]."""
-        steel = spec.steel[entry.bars.steel]
-        yield_strength = (
-            here.common[f"steel.{entry.bars.steel}"]
-            + steel.local_sd * here.chance["yield strength"]
-        )
-        if entry.depth_sd is None:
-            deviation = dimension_deviation(entry.depth)
-            depth = entry.depth + deviation.mean + deviation.sd * here.chance["depth"]
-        else:
-            depth = entry.depth + entry.depth_sd * here.chance["depth"]
         lever = effective_depth(
-            depth, np.maximum(here.local["cover"], 0.0), entry.link_diameter, entry.bars.diameter
+            _depth(entry, here),
+            np.maximum(here.local["cover"], 0.0),
+            entry.link_diameter,
+            here.local.get("bar diameter", entry.bars.diameter),
         )
+        width, flange_width, flange_thickness = _outline(entry, here)
         resistance = bending_resistance(
             self._steel_area(entry, spec, here),
-            np.maximum(yield_strength, 0.0),
+            np.maximum(_yield_strength(entry, spec, here), 0.0),
             here.local["strength"],
             lever,
-            entry.width,
-            None if entry.flange is None else entry.flange.width,
-            None if entry.flange is None else entry.flange.thickness,
+            width,
+            flange_width,
+            flange_thickness,
         )
         resistance_model = _factor(entry.resistance_model, RESISTANCE_MODEL)
         effect_model = _factor(entry.load_effect_model, LOAD_EFFECT_MODEL)
         ratio = _lognormal(resistance_model, here.chance["resistance model"]) / _lognormal(
             effect_model, here.chance["load effect model"]
         )
-        mean, sd = permanent_effect(entry.loads)
+        quantities = {
+            name: here.common[f"quantity.{name}"] / spec.quantities[name].stated_mean
+            for name in self.quantities(entry)
+        }
+        mean, sd = permanent_effect(entry.loads, quantities)
         permanent = mean + sd * here.chance["permanent load"]
-        return ratio * resistance - permanent
+        return np.asarray(ratio * resistance - permanent)
 
     def _steel_area(
         self, entry: BendingSection, spec: CaseSpec, here: Surroundings
     ) -> FloatArray | float:
         """Area of all bars at the end of each year [mm²]."""
-        diameter = entry.bars.diameter
+        diameter = here.local.get("bar diameter", entry.bars.diameter)
+        count = here.local.get("bar count", entry.bars.count)
         if not here.corrodes:
-            return entry.bars.count * np.pi * diameter**2 / 4.0
+            return count * np.pi * diameter**2 / 4.0
         corrosion = spec.zones[entry.zone].corrosion
         penetration = penetration_depth(here.local["current"], here.corroding())
         if corrosion is None or corrosion.attack == "uniform":
             return np.asarray(
-                entry.bars.count * residual_area_uniform(diameter, penetration), dtype=np.float64
+                count * residual_area_uniform(diameter, penetration), dtype=np.float64
             )
         location, inverse_scale = pitting_factor_distribution(diameter, entry.bars.pit_length)
         area: FloatArray | float = 0.0
         for k, bars in enumerate(_pit_groups(entry.bars.count)):
-            factor = _gumbel(float(location), float(inverse_scale), here.chance[f"pitting {k + 1}"])
+            factor = _gumbel(location, inverse_scale, here.chance[f"pitting {k + 1}"])
             area = area + bars * residual_area_pit(
                 diameter, pit_depth(penetration, np.maximum(factor, 1.0))
             )
-        return area
+        return area * (count / entry.bars.count)  # pits of found bars are shared by fewer or more
 
     def load_models(self, entry: BendingSection) -> tuple[str, ...]:
         """Name the load model of the variable load, if it has one."""
@@ -262,8 +334,20 @@ class Bending(LimitState):
             _load_words(entry),
             "Resistance counts as that at the end of each year.",
         ]
-        if entry.depth_sd is None:
+        zone = spec.zones[entry.zone].dimensions
+        if zone is not None and zone.depth_deviation is not None:
+            said.append(
+                "Depth deviates from its nominal value by a part common to the zone and one of the "
+                "section."
+            )
+        elif entry.depth_sd is None:
             said.append("Depth deviates from its nominal value as in JCSS part 3.10.")
+        said += [
+            f"The effect of {load.name} is proportional to {' and to '.join(load.proportional_to)},"
+            " taken as the mean over the structure."
+            for load in entry.loads.permanent
+            if load.proportional_to
+        ]
         corrosion = spec.zones[entry.zone].corrosion
         if corrosion is not None:
             said.append(

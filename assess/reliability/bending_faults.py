@@ -6,7 +6,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from assess.case.forms import Complaint
-from assess.case.spec import CaseSpec
+from assess.case.spec import CaseSpec, Zone
+from assess.case.yamlfile import listed, nearest
 from assess.mechanics.dimensions import effective_depth
 from assess.reliability.loads import AnnualMaximumEffect, Loads
 
@@ -141,3 +142,52 @@ def _wrong_model(
         mend = "state the lever, moment over force" if model.quantity == "force" else "no lever"
         given = "a lever" if stated.lever is not None else "no lever"
         yield Complaint((*place, "lever"), what, given, "", mend)
+
+
+def unknown_quantities(loads: Loads, spec: CaseSpec) -> Iterator[Complaint]:
+    """Find quantities that permanent loads depend on and that the case does not state.
+
+    Parameters
+    ----------
+    loads : Loads
+        Load effects at the section.
+    spec : CaseSpec
+        Tells the quantities there are.
+
+    Yields
+    ------
+    Complaint
+        With the place from the section's entry.
+    """
+    known = spec.quantities
+    for i, load in enumerate(loads.permanent):
+        for j, name in enumerate(load.proportional_to):
+            place = ("loads", "permanent", i, "proportional_to", j)
+            if name not in known:
+                what = "there is no quantity of this name"
+                mend = nearest(name, known) or "state it under quantities"
+                yield Complaint(place, what, name, listed(known) or "none", mend)
+            elif name in load.proportional_to[:j]:
+                yield Complaint(place, "the quantity stands twice", name, mend="keep one of them")
+
+
+def twice_stated(depth_sd: float | None, zone: Zone) -> Iterator[Complaint]:
+    """Find a depth whose deviation both the section and its zone state.
+
+    Parameters
+    ----------
+    depth_sd : float or None
+        Standard deviation of the depth that the section states. [mm]
+    zone : Zone
+        The section's zone.
+
+    Yields
+    ------
+    Complaint
+        With the place from the section's entry.
+    """
+    if depth_sd is None or zone.dimensions is None or zone.dimensions.depth_deviation is None:
+        return
+    what = "the zone states how depths deviate, and so does the section"
+    mend = "leave out depth_sd, or the zone's depth_deviation and depth_scatter"
+    yield Complaint(("depth_sd",), what, f"{depth_sd:g} mm", mend=mend)

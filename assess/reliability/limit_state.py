@@ -43,10 +43,12 @@ class Surroundings:
     """What a limit state sees of one section: draws, local values and the passing of time.
 
     ``local`` holds what the kinds of evidence know of the section, each (n, k, 1): strength
-    [MPa], cover [mm], onset [yr], current [µA/cm²] where the zone corrodes; ``common`` the
-    common variables by name, (n, 1, 1); ``chance`` the limit state's own standard normals, each
-    (n, k, 1). ``corroding`` turns an onset into years of corrosion at full current, (n, k,
-    n_year), the option's arrest included.
+    [MPa], cover [mm], onset [yr], current [µA/cm²] where the zone corrodes; where measured, or
+    where the zone says more of them, yield strength [MPa], deviations of dimensions and bar
+    diameter [mm], bar count; ``common`` the common variables by name, (n, 1, 1); ``chance`` the
+    limit state's own standard normals, each (n, k, 1), without those that a local variable of
+    the same name stands for. ``corroding`` turns an onset into years of corrosion at full
+    current, (n, k, n_year), the option's arrest included.
     """
 
     local: Mapping[str, FloatArray]
@@ -94,6 +96,10 @@ class LimitState(ABC):
 
     def load_models(self, entry: Any) -> tuple[str, ...]:
         """Name the load models, with uncertain parameters, that the section uses."""
+        return ()
+
+    def quantities(self, entry: Any) -> tuple[str, ...]:
+        """Name the measurable quantities that the section's permanent loads depend on."""
         return ()
 
     @abstractmethod

@@ -35,7 +35,15 @@ class PermanentLoad(Closed):
 
     name: str = Field(description="such as self weight or surfacing")
     effect: Moment = Field(description="mean of its effect at the section")
-    V: CoefficientOfVariation = Field(description="coefficient of variation of the effect")
+    V: CoefficientOfVariation = Field(
+        description="coefficient of variation of the effect, given the quantities that it is "
+        "proportional to"
+    )
+    proportional_to: tuple[str, ...] = Field(
+        (),
+        description="names under `quantities`; the effect is stated for their stated means and "
+        "grows in proportion to each",
+    )
     source: str = Field("", description="where effect and V come from")
 
 
@@ -122,8 +130,37 @@ class Loads(Closed):
     variable: VariableLoad
 
 
-def permanent_effect(loads: Loads) -> tuple[float, float]:
-    """Mean and standard deviation of the sum of independent normal permanent effects."""
-    mean = sum(load.effect for load in loads.permanent)
-    variance = sum((load.effect * load.V) ** 2 for load in loads.permanent)
-    return float(mean), float(np.sqrt(variance))
+def permanent_effect(
+    loads: Loads, ratio: Mapping[str, FloatArray] = NOTHING
+) -> tuple[FloatArray | float, FloatArray | float]:
+    r"""Mean and standard deviation of the sum of independent normal permanent effects.
+
+    Parameters
+    ----------
+    loads : Loads
+        At the section.
+    ratio : mapping of str to ndarray
+        Quantity over its stated mean, by name, for those that a load is proportional to; any
+        shapes that broadcast. [-]
+
+    Returns
+    -------
+    tuple
+        Given the quantities, in the unit of the effects; of the shape of the ratios, numbers
+        where no load is proportional to anything.
+
+    Notes
+    -----
+    With mean effect :math:`E_i`, coefficient of variation :math:`V_i` and ratios :math:`r` of the
+    quantities that load i is proportional to, :math:`m_i = E_i \prod r`: the mean is
+    :math:`\sum m_i` and the variance :math:`\sum (V_i m_i)^2`.
+    """
+    mean: FloatArray | float = 0.0
+    variance: FloatArray | float = 0.0
+    for load in loads.permanent:
+        effect: FloatArray | float = load.effect
+        for name in load.proportional_to:
+            effect = effect * ratio[name]
+        mean = mean + effect
+        variance = variance + (load.V * effect) ** 2
+    return mean, np.sqrt(variance)

@@ -28,6 +28,9 @@ GROUPS = {
     "onset": "onset of corrosion",
     "current": "corrosion rate",
     "current through its onset": "corrosion rate",
+    "bar diameter": "size of the bars",
+    "width deviation": "dimensions",
+    "flange thickness deviation": "dimensions",
 }
 
 
@@ -37,6 +40,7 @@ class SectionState:
 
     entry: SectionEntry
     locals: tuple[LocalModel, ...]
+    kinds: tuple[str, ...]  # of evidence that each of `locals` comes from
     common: Mapping[str, FloatArray]  # common variables of the section, each (n_draw,)
     measured: frozenset[str]  # kinds of evidence that a survey brought from the section itself
 
@@ -52,13 +56,24 @@ def common_names(spec: CaseSpec, entry: SectionEntry) -> tuple[str, ...]:
     zone = spec.zones[entry.zone]
     return (
         *(f"{entry.zone}.{name}" for name in zone.variables()),
-        *(f"steel.{name}" for name in state.steels(entry)),
+        *(
+            variable
+            for name in state.steels(entry)
+            for variable in (f"steel.{name}", *_scatter_of(spec, name))
+        ),
+        *(f"quantity.{name}" for name in state.quantities(entry)),
         *(
             f"load.{name}.{key}"
             for name in state.load_models(entry)
             for key, _, _ in spec.load_models[name].priors()
         ),
     )
+
+
+def _scatter_of(spec: CaseSpec, steel: str) -> tuple[str, ...]:
+    """Name the scatter of a reinforcement where it is uncertain."""
+    known = isinstance(spec.steel[steel].local_sd, float)
+    return () if known else (f"steel.{steel}.scatter",)
 
 
 def section_state(
@@ -87,10 +102,13 @@ def section_state(
         With local variables in a fixed order.
     """
     locals_: list[LocalModel] = []
+    kinds: list[str] = []
     measured: set[str] = set()
     for key, kind in KINDS.items():
         rows = spec.rows.get(key)
-        locals_ += kind.local(rows, stage, entry.name, entry.zone, values)
+        found = kind.local(rows, stage, entry.name, entry.zone, values)
+        locals_ += found
+        kinds += [key] * len(found)
         place = None if rows is None else rows.place_of(entry.name)
         if (
             rows is not None
@@ -100,7 +118,11 @@ def section_state(
             measured.add(key)
     names = common_names(case.spec, entry)
     return SectionState(
-        entry, tuple(locals_), {name: values[name] for name in names}, frozenset(measured)
+        entry,
+        tuple(locals_),
+        tuple(kinds),
+        {name: values[name] for name in names},
+        frozenset(measured),
     )
 
 
@@ -125,17 +147,23 @@ def without_dependence(state: SectionState, seed: int) -> SectionState:
     rng = np.random.default_rng([seed, 99])
     common = {name: rng.permutation(draws) for name, draws in state.common.items()}
     locals_: list[LocalModel] = []
+    kinds: list[str] = []
     for key, kind in KINDS.items():
-        # Without measurements of its own the section follows its (permuted) zone.
-        follows = kind.local(None, 0, state.entry.name, state.entry.zone, common)
-        names = {name for model in follows for name in model.names}
-        own = [model for model in state.locals if names.intersection(model.names)]
-        locals_ += [m.without_dependence(rng) for m in own] if key in state.measured else follows
-    return SectionState(state.entry, tuple(locals_), common, state.measured)
+        own = [m for m, of in zip(state.locals, state.kinds, strict=True) if of == key]
+        if key in state.measured:
+            found = [model.without_dependence(rng) for model in own]
+        else:  # without measurements of its own the section follows its (permuted) zone
+            found = list(kind.local(None, 0, state.entry.name, state.entry.zone, common))
+        locals_ += found
+        kinds += [key] * len(found)
+    return SectionState(state.entry, tuple(locals_), tuple(kinds), common, state.measured)
 
 
 def dimensions(state: SectionState) -> dict[str, str]:
-    """Name the standard normals of a section in order, each with its group in words."""
+    """Name the standard normals of a section in order, each with its group in words.
+
+    A local variable takes the place of the limit state's own standard normal of its name.
+    """
     limit_state = LIMIT_STATES[state.entry.limit_state]
     return {
         **{

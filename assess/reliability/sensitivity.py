@@ -21,6 +21,13 @@ _COMMON_GROUPS = {
     "onset_scatter": "onset of corrosion",
     "current": "corrosion rate",
     "current_scatter": "corrosion rate",
+    "depth_deviation": "cover and depth",
+    "depth_scatter": "cover and depth",
+    **{
+        f"{dimension}_{part}": "dimensions"
+        for dimension in ("width", "flange_thickness")
+        for part in ("deviation", "scatter")
+    },
 }
 
 
@@ -81,6 +88,8 @@ def _common_group(name: str) -> str:
     """Name the group that a common variable counts to."""
     if name.startswith("load."):
         return VARIABLE_LOAD
+    if name.startswith("quantity."):
+        return "permanent load"
     return _COMMON_GROUPS.get(name.rpartition(".")[2], "steel strength")
 
 

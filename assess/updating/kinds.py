@@ -5,6 +5,7 @@ from importlib.metadata import EntryPoint, entry_points
 from types import MappingProxyType
 
 from assess.updating.annual_maxima import AnnualMaxima
+from assess.updating.bars_found import BarsFound
 from assess.updating.carbonation_depth import CarbonationDepth
 from assess.updating.chloride_profile import ChlorideProfile
 from assess.updating.cores import Cores
@@ -12,9 +13,12 @@ from assess.updating.corrosion_current import CorrosionCurrent
 from assess.updating.cover import Cover
 from assess.updating.crack_width import CrackWidth
 from assess.updating.delamination import Delamination
+from assess.updating.dimensions import Dimensions
 from assess.updating.half_cell import HalfCell
 from assess.updating.kind import EvidenceKind
+from assess.updating.quantities import Quantities
 from assess.updating.section_loss import SectionLoss
+from assess.updating.yield_strength import YieldStrength
 
 # An installed package adds a kind by an entry point of this group that names a subclass of
 # `EvidenceKind` which can be made without arguments.
@@ -22,6 +26,7 @@ GROUP = "assess.evidence"
 
 OWN: tuple[EvidenceKind, ...] = (
     AnnualMaxima(),
+    BarsFound(),
     CarbonationDepth(),
     ChlorideProfile(),
     Cores(),
@@ -29,8 +34,11 @@ OWN: tuple[EvidenceKind, ...] = (
     Cover(),
     CrackWidth(),
     Delamination(),
+    Dimensions(),
     HalfCell(),
+    Quantities(),
     SectionLoss(),
+    YieldStrength(),
 )
 
 

@@ -46,12 +46,18 @@ def joint_prior(case: Case) -> JointPrior:
     Returns
     -------
     JointPrior
-        Zones in the order of the case, then steel, then measuring variables.
+        Zones in the order of the case, then steel, quantities, loads, then measuring variables.
     """
     variables: list[AnyVariable] = []
     for name, zone in case.spec.zones.items():
         variables += _zone_variables(name, zone)
-    variables += [_steel_variable(name, steel) for name, steel in case.spec.steel.items()]
+    for name, steel in case.spec.steel.items():
+        variables += _steel_variables(name, steel)
+    for name, quantity in case.spec.quantities.items():
+        variables += [
+            _stated((f"quantity.{name}{end}", f"{label}, {name}", symbol, quantity.unit, ""), prior)
+            for end, label, symbol, prior in quantity.priors()
+        ]
     for name, model in case.spec.load_models.items():
         variables += [
             _stated(
@@ -217,8 +223,9 @@ def _stated(head: tuple[str, str, str, str, str], stated: Distribution) -> Varia
     return Variable(*head, stated.source, stated.marginal())
 
 
-def _steel_variable(name: str, steel: Steel) -> Variable:
-    return Variable(
+def _steel_variables(name: str, steel: Steel) -> list[Variable]:
+    """Give the mean yield strength of a reinforcement, and its scatter where it is uncertain."""
+    level = Variable(
         f"steel.{name}",
         f"mean yield strength, {name}",
         "$f_y$",
@@ -227,3 +234,8 @@ def _steel_variable(name: str, steel: Steel) -> Variable:
         steel.source,
         make_marginal("normal", mean=steel.mean, sd=steel.sd),
     )
+    if isinstance(steel.local_sd, float):
+        return [level]
+    label = f"scatter of yield strength from bar to bar, {name}"
+    head = (f"steel.{name}.scatter", label, "$\\sigma_{f_y}$", "MPa", "")
+    return [level, _stated(head, steel.local_sd)]

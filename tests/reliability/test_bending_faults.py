@@ -3,8 +3,15 @@ from types import SimpleNamespace
 
 import pytest
 
+from assess.case.processes import Dimensions
 from assess.case.spec import Structure
-from assess.reliability.bending_faults import Shape, impossible_load, impossible_shape
+from assess.reliability.bending_faults import (
+    Shape,
+    impossible_load,
+    impossible_shape,
+    twice_stated,
+    unknown_quantities,
+)
 from assess.reliability.loads import Loads
 
 SHAPE = Shape(1000.0, 320.0, (1800.0, 180.0), 10.0, 7, 32.0, 320.0)
@@ -67,3 +74,35 @@ def test_a_load_without_a_distribution(maximum: dict[str, object], key: str, wor
     (complaint,) = impossible_load(loads(**maximum), SPEC)
     assert complaint.keys == ("loads", "variable", "annual_maximum", key)
     assert words in complaint.what
+
+
+def test_permanent_loads_need_the_quantities_that_they_grow_with() -> None:
+    stated = {"name": "self weight", "effect": 1e6, "V": 0.05, "proportional_to": ["density"]}
+    found = Loads.model_validate(
+        {"permanent": [stated], "variable": {"annual_maximum": {"mean": 1e6, "V": 0.1}}}
+    )
+    assert list(unknown_quantities(found, SimpleNamespace(quantities={"density": None}))) == []
+    (complaint,) = unknown_quantities(found, SimpleNamespace(quantities={"densities": None}))
+    assert complaint.keys == ("loads", "permanent", 0, "proportional_to", 0)
+    assert (complaint.given, complaint.allowed) == ("density", "densities")
+    assert complaint.mend == "did you mean 'densities'?"
+    (complaint,) = unknown_quantities(found, SimpleNamespace(quantities={}))
+    assert complaint.mend == "state it under quantities"
+
+
+def test_the_deviation_of_a_depth_is_stated_once() -> None:
+    def distribution(kind: str, mean: float) -> dict[str, object]:
+        return {"distribution": kind, "mean": mean, "sd": 3.0, "source": "test"}
+
+    stated = Dimensions.model_validate(
+        {
+            "depth_deviation": distribution("normal", 2.0),
+            "depth_scatter": distribution("lognormal", 5.0),
+        }
+    )
+    zone = SimpleNamespace(dimensions=stated)
+    assert list(twice_stated(None, zone)) == []
+    assert list(twice_stated(5.0, SimpleNamespace(dimensions=None))) == []
+    (complaint,) = twice_stated(5.0, zone)
+    assert complaint.keys == ("depth_sd",)
+    assert "so does the section" in complaint.what

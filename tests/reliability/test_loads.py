@@ -26,6 +26,25 @@ def test_permanent_effects_add_up_as_independent_normals():
     assert sd == pytest.approx(np.hypot(28e6, 20e6))
 
 
+def test_permanent_effects_grow_with_what_they_are_proportional_to():
+    loads = Loads.model_validate(
+        {
+            "permanent": [
+                {"name": "self weight", "effect": "560 kN*m", "V": 0.05, "proportional_to": ["c"]},
+                {"name": "fill", "effect": 200e6, "V": 0.1, "proportional_to": ["c", "t"]},
+                {"name": "parapets", "effect": "30 kN*m", "V": 0.02},
+            ],
+            "variable": {"annual_maximum": {"mean": "440 kN*m", "V": 0.1}},
+        }
+    )
+    density, thickness = np.array([[1.0], [1.1]]), np.array([[1.0], [0.8]])
+    mean, sd = permanent_effect(loads, {"c": density, "t": thickness})
+    # By hand: 560 + 200 + 30; 560 x 1.1 + 200 x 1.1 x 0.8 + 30, and 5, 10 and 2 % of these.
+    np.testing.assert_allclose(mean, [[790e6], [822e6]])
+    expected = [np.sqrt(28.0**2 + 20.0**2 + 0.6**2), np.sqrt(30.8**2 + 17.6**2 + 0.6**2)]
+    np.testing.assert_allclose(sd[:, 0], 1e6 * np.array(expected))
+
+
 def test_no_permanent_load_is_nothing():
     loads = Loads.model_validate({"variable": {"annual_maximum": {"mean": 1e6, "V": 0.1}}})
     assert permanent_effect(loads) == (0.0, 0.0)

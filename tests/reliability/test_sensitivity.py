@@ -81,3 +81,18 @@ def test_constants_have_no_share(monkeypatch):
     common = {"deck.onset": rng.standard_normal(500), "deck.cover_mean": np.full(500, 40.0)}
     factors = found(monkeypatch, [1.0], common, pull=(1.0, 0.0), mean=4.0)
     assert "cover and depth" not in factors
+
+
+def test_quantities_and_deviations_count_to_what_they_act_on(monkeypatch):
+    rng = np.random.default_rng(1)
+    names = {
+        "quantity.concrete": "permanent load",
+        "deck.depth_deviation": "cover and depth",
+        "deck.width_deviation": "dimensions",
+        "steel.main.scatter": "steel strength",
+    }
+    common = {name: rng.standard_normal(4000) for name in names}
+    factors = found(monkeypatch, [1.0], common, pull=(0.8, 0.6, 0.4, 0.5), mean=4.5)
+    norm = np.sqrt(1.0 + 0.64 + 0.36 + 0.16 + 0.25)
+    for group, pull in zip(names.values(), (0.8, 0.6, 0.4, 0.5), strict=True):
+        assert factors[group] == pytest.approx(pull / norm, abs=0.05)

@@ -92,3 +92,58 @@ def test_nominal_cover_and_sound_zone(make_case):
     assert np.mean(draws["deck.cover_mean"]) == pytest.approx(45.0, abs=0.2)
     assert 5.0 < np.median(draws["deck.cover_scatter"]) < 10.0  # JCSS PMC part 3.10
     assert "deck.onset" not in draws
+
+
+def test_quantities_have_a_mean_and_where_stated_a_scatter(make_case):
+    case = cases.base()
+    level = {"distribution": "normal", "mean": "24 kN/m^3", "V": 0.03, "source": "test"}
+    scatter = {"distribution": "lognormal", "mean": "0.5 kN/m^3", "V": 0.3, "source": "test"}
+    case["quantities"] = {
+        "deck": {"of": "weight density", "level": level, "scatter": scatter},
+        "fill": {"of": "weight density", "level": level},
+    }
+    case["dependence"] = [
+        {"between": ["quantity.deck", "quantity.fill"], "spearman": 0.5, "source": "test"}
+    ]
+    made = make_case(case)
+    draws = _draws(made, 100_000)
+    assert np.mean(draws["quantity.deck"]) == pytest.approx(24.0, rel=1e-3)
+    assert np.std(draws["quantity.fill"]) == pytest.approx(0.72, rel=0.01)
+    assert np.mean(draws["quantity.deck.scatter"]) == pytest.approx(0.5, rel=0.01)
+    assert "quantity.fill.scatter" not in draws
+    spearman = stats.spearmanr(draws["quantity.deck"], draws["quantity.fill"]).statistic
+    assert spearman == pytest.approx(0.5, abs=0.02)
+    (variable,) = (one for one in joint_prior(made).variables if one.name == "quantity.deck")
+    assert (variable.unit, variable.label) == ("kN/m³", "mean weight density, deck")
+
+
+def test_the_scatter_of_a_steel_may_be_uncertain(make_case):
+    case = cases.base()
+    case["steel"]["main"]["local_sd"] = {"catalogue": "yield strength scatter of one melt"}
+    case["dependence"] = [
+        {"between": ["steel.main", "steel.main.scatter"], "kendall": 0.2, "source": "test"}
+    ]
+    draws = _draws(make_case(case), 100_000)
+    # JCSS part 3.2: 8 MPa within a melt.
+    assert np.mean(draws["steel.main.scatter"]) == pytest.approx(8.0, rel=0.01)
+    kendall = stats.kendalltau(draws["steel.main"], draws["steel.main.scatter"]).statistic
+    assert kendall == pytest.approx(0.2, abs=0.015)
+
+
+def test_only_stated_deviations_of_dimensions_are_variables(make_case):
+    case = cases.base()
+    case["zones"]["deck"]["dimensions"] = {
+        "depth_deviation": {
+            "catalogue": "deviation of dimensions of 1000 mm and more in a zone",
+        },
+        "depth_scatter": {"catalogue": "scatter of dimensions of 1000 mm and more in a zone"},
+    }
+    draws = _draws(make_case(case), 100_000)
+    total = draws["deck.depth_deviation"] + draws["deck.depth_scatter"] * np.random.default_rng(
+        1
+    ).standard_normal(100_000)
+    # JCSS part 3.10 for 1000 mm: mean 3 mm, standard deviation 10 mm (a little more here, as the
+    # scatter is uncertain itself: 10 sqrt(1 + 0.09/2)).
+    assert np.mean(total) == pytest.approx(3.0, abs=0.15)
+    assert np.std(total) == pytest.approx(10.22, rel=0.02)
+    assert "deck.width_deviation" not in draws
