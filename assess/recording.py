@@ -6,6 +6,7 @@ from assess.case.events import Event, LoadTest
 from assess.case.reader import Case
 from assess.decisions.economics import option_results
 from assess.decisions.results import (
+    CodeRecord,
     Conflict,
     DataRecord,
     Provenance,
@@ -16,6 +17,7 @@ from assess.decisions.results import (
     VariableRecord,
 )
 from assess.decisions.sections import used_variables
+from assess.probability.mixtures import predictive_fractile
 from assess.reliability.limit_states import LIMIT_STATES
 from assess.reliability.teaching import teachings
 from assess.updating.checks import DataSet, surprises
@@ -23,6 +25,7 @@ from assess.updating.kinds import KINDS
 from assess.updating.model import Spec
 from assess.updating.power_scaling import power_scaling
 from assess.updating.stages import StageDraws
+from assess.updating.variables import Variable
 
 
 def run_record(
@@ -81,6 +84,7 @@ def run_record(
         provenance=Provenance("", "", 0, {}, {}, {}, ""),
         power_scaling=power_scaling(stages[len(case.stages)], spec.prior, used_variables(case)),
         teaching=teachings(case, spec, stages[: len(case.stages) + 1], seed),
+        code_strengths=_code_records(spec, stages[-1]),
     )
 
 
@@ -117,6 +121,26 @@ def _variable_records(case: Case, spec: Spec, stages: Sequence[StageDraws]) -> l
             draws={draws.name: draws.physical[..., i] for draws in stages},
         )
         for i, variable in enumerate(spec.prior.variables)
+        if not (isinstance(variable, Variable) and variable.latent)
+    ]
+
+
+def _code_records(spec: Spec, draws: StageDraws) -> list[CodeRecord]:
+    """Set what codes make of the measurements beside the draws."""
+    values = draws.values()
+    return [
+        CodeRecord(
+            item.zone,
+            item.quantity,
+            item.code,
+            item.count,
+            item.value,
+            item.note,
+            item.fractile,
+            predictive_fractile(values[item.variable[0]], values[item.variable[1]], item.fractile),
+        )
+        for key, rows in spec.rows.items()
+        for item in KINDS[key].code_strengths(rows)
     ]
 
 

@@ -119,6 +119,20 @@ class DataRecord:
 
 
 @dataclass(frozen=True, slots=True)
+class CodeRecord:
+    """A characteristic value as a code has it, beside that of the last state of knowledge."""
+
+    zone: str
+    quantity: str
+    code: str
+    count: int  # places that it rests on
+    value: float | None
+    note: str
+    fractile: float
+    posterior: float  # the same fractile of local values, all uncertainty integrated
+
+
+@dataclass(frozen=True, slots=True)
 class StageRecord:
     """One state of knowledge."""
 
@@ -184,6 +198,7 @@ class RunRecord:
     accepted_unconverged: bool = False
     power_scaling: Sequence[PowerScaling] = ()  # after the last survey
     teaching: Sequence[Teaching] = ()  # what was taught about each section
+    code_strengths: Sequence[CodeRecord] = ()
 
     def result(self, section: str, stage: str, option: str = "leave") -> SectionResult:
         """Find one section's result.

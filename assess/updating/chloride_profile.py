@@ -166,7 +166,7 @@ class ChlorideProfile(EvidenceKind):
             for name, what in zip(score_names(KEY, place), words, strict=True):
                 label = f"score of the {what} at {place.removeprefix(f'{rows.zones[zone]}: ')}"
                 head = (name, label, "$z$", "-", rows.zones[zone])
-                found.append(Variable(*head, "by construction", standard))
+                found.append(Variable(*head, "by construction", standard, latent=True))
         for zone in _scaled_zones(rows):
             label = f"binder content over that stated, {zone}"
             found.append(catalogue_variable(_factor_name(zone), label, "$f$", "-", BINDER_PRIOR))

@@ -12,10 +12,13 @@ from assess import operations as op
 from assess.case.forms import Column, EvidenceEntry, EvidenceForm
 from assess.case.reader import Case
 from assess.errors import Fault
-from assess.mechanics.core_corrections import DIAMETER_RANGE, correction
+from assess.mechanics.core_corrections import DIAMETER_RANGE
 from assess.probability.marginals import make_marginal
-from assess.updating.core_faults import uncorrectable_cores
+from assess.updating.core_codes import code_strengths
+from assess.updating.core_faults import impossible_bars, uncorrectable_cores
+from assess.updating.core_values import BARS, CORRECTIONS, core_values
 from assess.updating.kind import (
+    CodeStrength,
     EvidenceKind,
     FloatArray,
     Numeric,
@@ -26,20 +29,26 @@ from assess.updating.kind import (
     population_local,
     zone_values,
 )
-from assess.updating.local import LocalModel
+from assess.updating.local import LocalModel, TabulatedLocal, quantile_table, scores_of_density
 from assess.updating.nested import local_posterior, nested_log_likelihood
+from assess.updating.robust import (
+    Readings,
+    padded_places,
+    robust_local_density,
+    robust_log_likelihood,
+)
 from assess.updating.variables import Variable
 
-CORRECTIONS = ("length", "diameter", "moisture", "damage")
+SOURCES = {"bar": "engineering judgement, no source: half of what the correction for bars adds"}
 
 
 class CoresEntry(EvidenceEntry):
     """What a survey says of its cores."""
 
-    correction: Literal["ACI 214.4R", "none"] = Field(
+    correction: Literal["ACI 214.4R", "EN 13791", "none"] = Field(
         "ACI 214.4R",
-        description="Factors from the tested core to the strength in the structure; 'none' where "
-        "the table already holds corrected strengths.",
+        description="Factors from the tested core to the strength in the structure, as of a core "
+        "twice as long as wide; 'none' where the table already holds corrected strengths.",
     )
     within_location: float = Field(
         0.05,
@@ -47,6 +56,17 @@ class CoresEntry(EvidenceEntry):
         le=0.3,
         description="Coefficient of variation of one core about the strength of its location: "
         "test repeatability and variation within a section. Engineering judgement, no source.",
+    )
+    errors: Literal["normal", "Student-t"] = Field(
+        "normal",
+        description="How ln of a core's strength scatters about that of its location. Student-t "
+        "lets a core that is far off (a crack, a lost label) count for little.",
+    )
+    freedom: float = Field(
+        4.0,
+        ge=1.0,
+        le=100.0,
+        description="Degrees of freedom of Student-t errors. 4 is common practice, no source.",
     )
 
 
@@ -56,7 +76,7 @@ class Cores(EvidenceKind):
     Notes
     -----
     For core i at place j of a zone, with :math:`y_i` the logarithm of the strength after the
-    factors of ACI 214.4R-10:
+    factors of ACI 214.4R-10 or EN 13791:2019:
 
     .. math:: y_i = u_j + \sum_k V_{ik} b_k + e_i, \quad u_j \sim N(\mu, \sigma^2),
               \quad e_i \sim N(0, s^2)
@@ -64,7 +84,8 @@ class Cores(EvidenceKind):
     The errors :math:`b_k` of the correction factors are common to all cores of the structure
     (a factor that is wrong is wrong for every core it is applied to), standard normal, with
     :math:`V_{ik}` the coefficient of variation that the source gives for the factor. Local
-    strengths are integrated out (`nested_log_likelihood`).
+    strengths are integrated out (`nested_log_likelihood`; with Student-t errors, of scale s and
+    the stated degrees of freedom, `robust_log_likelihood`).
     """
 
     form = EvidenceForm(
@@ -87,6 +108,14 @@ class Cores(EvidenceKind):
                 "condition when tested",
                 choices=("as received", "soaked", "air dried"),
             ),
+            *(
+                Column(name, what, "mm", required=False, above=0.0, below=above)
+                for pair, which in zip(BARS, ("a bar", "a second bar"), strict=True)
+                for name, what, above in (
+                    (pair[0], f"diameter of {which} across the core", 60.0),
+                    (pair[1], f"distance of {which} from the nearer end of the core", 400.0),
+                )
+            ),
         ),
         value="strength",
         log_scale=True,
@@ -95,7 +124,7 @@ class Cores(EvidenceKind):
     log_scale = True
     assumption = (
         "Core strengths of a zone are lognormal from place to place; the errors of the correction "
-        "factors of ACI 214.4R-10 are common to all cores."
+        "factors (ACI 214.4R-10 or EN 13791:2019, as the case says) are common to all cores."
     )
     carrier = "concrete_mean"
 
@@ -104,8 +133,11 @@ class Cores(EvidenceKind):
         return [
             fault
             for _, item in gather(case, self.form.key)
-            if cast(CoresEntry, item.entry).correction != "none"
-            for fault in uncorrectable_cores(self.form, item.table)
+            if (rule := cast(CoresEntry, item.entry).correction) != "none"
+            for fault in (
+                *uncorrectable_cores(self.form, item.table, rule),
+                *impossible_bars(self.form, item.table),
+            )
         ]
 
     def rows(self, case: Case) -> Rows | None:
@@ -113,40 +145,21 @@ class Cores(EvidenceKind):
         items = gather(case, self.form.key)
         if not items:
             return None
-        value: list[FloatArray] = []
-        loading: list[FloatArray] = []
-        precision: list[FloatArray] = []
-        for _, item in items:
-            entry = cast(CoresEntry, item.entry)
-            strength = item.table.numbers["strength"]
-            if entry.correction == "none":
-                factor = np.ones_like(strength)
-                errors = np.zeros((len(strength), len(CORRECTIONS)))
-            else:
-                factors = correction(
-                    strength,
-                    item.table.numbers["diameter"],
-                    item.table.numbers["length"],
-                    item.table.texts["moisture"],
-                )
-                factor = factors.factor
-                errors = np.stack(
-                    [
-                        np.broadcast_to(v, strength.shape)
-                        for v in (
-                            factors.V_length,
-                            factors.V_diameter,
-                            factors.V_moisture,
-                            factors.V_damage,
-                        )
-                    ],
-                    axis=-1,
-                )
-            value.append(np.log(strength * factor))
-            loading.append(errors)
-            scatter = np.log1p(entry.within_location**2)
-            precision.append(np.full(len(strength), 1.0 / scatter))
-        return build_rows(items, value, {"loading": loading, "precision": precision})
+        found = [core_values(i.table, cast(CoresEntry, i.entry).correction) for _, i in items]
+        counts = [len(values.log_strength) for values in found]
+        entries = [cast(CoresEntry, item.entry) for _, item in items]
+        per_core = [
+            (1.0 / np.log1p(entry.within_location**2), _freedom(entry)) for entry in entries
+        ]
+        return build_rows(
+            items,
+            [values.log_strength for values in found],
+            {
+                "loading": [values.loading for values in found],
+                "precision": [np.full(n, p) for n, (p, _) in zip(counts, per_core, strict=True)],
+                "freedom": [np.full(n, f) for n, (_, f) in zip(counts, per_core, strict=True)],
+            },
+        )
 
     def variables(self, case: Case) -> tuple[Variable, ...]:
         """Give the errors of the correction factors that the case's cores need."""
@@ -160,7 +173,9 @@ class Cores(EvidenceKind):
                 symbol=f"$b_\\mathrm{{{name}}}$",
                 unit="-",
                 zone="",
-                source="ACI 214.4R-10, coefficients of variation of the correction factors",
+                source=SOURCES.get(
+                    name, "ACI 214.4R-10, coefficients of variation of the correction factors"
+                ),
                 marginal=make_marginal("normal", parameters={"mean": 0.0, "sd": 1.0}),
             )
             for k, name in enumerate(CORRECTIONS)
@@ -189,15 +204,28 @@ class Cores(EvidenceKind):
         """Log-likelihood of all active cores, local strengths integrated out."""
         log_mean = op.log(zone_values(rows, values, "concrete_mean"))
         variance = zone_values(rows, values, "concrete_scatter") ** 2
-        residual = data["cores_value"] - log_mean[..., rows.zone] - self._shift(rows, values)
-        weighted = data["cores_precision"] * residual
+        reading = data["cores_value"] - self._shift(rows, values)
+        heavy = np.unique(rows.place[np.isfinite(rows.extra["freedom"])])
+        residual = reading - log_mean[..., rows.zone]
+        plain = ~np.isin(rows.place, heavy)
+        precision = data["cores_precision"] * plain
+        weighted = precision * residual
         by_place = membership(rows.place, len(rows.places)).T
-        return nested_log_likelihood(
-            data["cores_precision"] @ by_place,
+        result = nested_log_likelihood(
+            precision @ by_place,
             weighted @ by_place,
             (weighted * residual) @ by_place,
             variance[..., rows.place_zone],
         ).sum(axis=-1)
+        if len(heavy) == 0:
+            return result
+        row, once = padded_places(rows.place, heavy)
+        readings = Readings(
+            reading[..., row], data["cores_precision"][row] * once, rows.extra["freedom"][row]
+        )
+        zone = rows.place_zone[heavy]
+        robust = robust_log_likelihood(readings, log_mean[..., zone], variance[..., zone])
+        return result + robust.sum(axis=-1)
 
     def simulate(
         self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator
@@ -208,7 +236,11 @@ class Cores(EvidenceKind):
         local = log_mean[:, rows.place_zone] + scatter[:, rows.place_zone] * rng.standard_normal(
             (len(log_mean), len(rows.places))
         )
-        error = rng.standard_normal((len(log_mean), len(rows.value)))
+        shape, freedom = (len(log_mean), len(rows.value)), rows.extra["freedom"]
+        heavy = np.isfinite(freedom)
+        error = rng.standard_normal(shape)
+        degrees = np.where(heavy, freedom, 1.0)
+        error = np.where(heavy, error / np.sqrt(rng.chisquare(degrees, shape) / degrees), error)
         return np.asarray(
             local[:, rows.place]
             + self._shift(rows, values)
@@ -231,9 +263,27 @@ class Cores(EvidenceKind):
         if rows is None or place is None:
             return (population,)
         here = (rows.place == place) & (rows.stage <= stage)
+        reading = rows.value - self._shift(rows, values)
+        freedom = rows.extra["freedom"][here]
+        if np.isfinite(freedom).any():
+            value = np.broadcast_to(reading, (len(population.mean), len(rows.value)))[:, here]
+            grid, density = robust_local_density(
+                value, rows.extra["precision"][here], freedom, population.mean, population.sd
+            )
+            scores, _ = scores_of_density(grid, density)
+            return (TabulatedLocal("strength", np.exp(quantile_table(grid, scores))),)
         precision = np.where(here, rows.extra["precision"], 0.0)
-        residual = rows.value - self._shift(rows, values) - population.mean[:, None]
+        residual = reading - population.mean[:, None]
         mean, sd = local_posterior(
             precision.sum(), residual @ precision, population.mean, population.sd**2
         )
         return (replace(population, mean=mean, sd=sd),)
+
+    def code_strengths(self, rows: Rows) -> Sequence[CodeStrength]:
+        """Characteristic strength of each zone by the codes."""
+        return code_strengths(rows)
+
+
+def _freedom(entry: CoresEntry) -> float:
+    """Degrees of freedom of the errors, infinite where they are normal."""
+    return entry.freedom if entry.errors == "Student-t" else np.inf

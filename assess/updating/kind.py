@@ -49,6 +49,20 @@ class Rows:
         return self.places.index(key) if key in self.places else None
 
 
+@dataclass(frozen=True, slots=True)
+class CodeStrength:
+    """A characteristic value as a code has it, beside which the report sets the posterior."""
+
+    zone: str
+    quantity: str  # "characteristic strength in the structure"
+    code: str  # "EN 13791:2019"
+    count: int  # places that it rests on
+    value: float | None  # None: the code gives none
+    note: str
+    variable: tuple[str, str]  # median of local values, standard deviation of their logarithms
+    fractile: float  # of local values, to be compared
+
+
 class EvidenceKind(ABC):
     """One kind of measurement: its table, its likelihood, its simulator, what it conditions."""
 
@@ -107,6 +121,10 @@ class EvidenceKind(ABC):
     def observed(self, rows: Rows, value: FloatArray) -> Rows:
         """Put other measured values in place of those of the rows (same design)."""
         return replace(rows, value=value)
+
+    def code_strengths(self, rows: Rows) -> Sequence[CodeStrength]:
+        """Give characteristic values as codes derive them from the measurements alone."""
+        return ()
 
     @abstractmethod
     def local(

@@ -31,6 +31,7 @@ class Variable:
     zone: str  # "" for the structure as a whole
     source: str
     marginal: Marginal
+    latent: bool = False  # local to one place and only a step of the calculation
 
     def value(self, score: Numeric, _known: Mapping[str, Numeric]) -> Numeric:
         """Map a standard normal score to the physical value."""

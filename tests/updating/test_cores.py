@@ -42,7 +42,7 @@ def _reference(rows, values):
     """Multivariate normal of all cores, built entry by entry."""
     count = len(rows.value)
     shift = sum(
-        values[f"cores.{name}_correction"] * rows.extra["loading"][:, k]
+        values.get(f"cores.{name}_correction", 0.0) * rows.extra["loading"][:, k]
         for k, name in enumerate(CORRECTIONS)
     )
     covariance = np.diag(1.0 / rows.extra["precision"])
@@ -79,7 +79,7 @@ def test_local_strength_given_its_cores(rows):
     values = _at(1)
     here = rows.place == rows.place_of("S1")
     shift = sum(
-        values[f"cores.{name}_correction"] * rows.extra["loading"][here, k]
+        values.get(f"cores.{name}_correction", 0.0) * rows.extra["loading"][here, k]
         for k, name in enumerate(CORRECTIONS)
     )
     prior, precision = 1.0 / 0.2**2, rows.extra["precision"][here]

@@ -29,7 +29,39 @@ def evidence(record: RunRecord) -> Section:
     if not record.data:
         words_none = "No survey data were given; every result rests on the prior."
         return Section("Evidence", [Paragraph([words_none])])
-    return Section("Evidence", [_ledger(record)])
+    blocks: list[Block] = [_ledger(record)]
+    if record.code_strengths:
+        blocks.append(_codes_table(record))
+    return Section("Evidence", blocks)
+
+
+def _codes_table(record: RunRecord) -> Table:
+    columns = [
+        Column("Zone"),
+        Column("Value by the code"),
+        Column("Places", right=True),
+        Column("By the code", "MPa", right=True),
+        Column("Fractile", right=True),
+        Column(f"This assessment, {record.stages[-1].name}", "MPa", right=True),
+    ]
+    rows = [
+        [
+            text_cell(item.zone),
+            text_cell(f"{item.quantity}, {item.code}"),
+            Cell(item.count, Form.INTEGER),
+            text_cell(item.note) if item.value is None else Cell(item.value, Form.SIGNIFICANT),
+            Cell(item.fractile, Form.PERCENT),
+            Cell(item.posterior, Form.SIGNIFICANT),
+        ]
+        for item in record.code_strengths
+    ]
+    notes = [
+        "What the codes make of the corrected cores of a zone alone, cores of one place counted "
+        "once, beside the same fractile of the strength from place to place as this assessment "
+        "has it (all uncertainty integrated; the prior and both kinds of error count too). Code "
+        "values are for comparison; nothing here is computed from them."
+    ]
+    return Table("Characteristic strengths by the codes", columns, rows, notes)
 
 
 def _ledger(record: RunRecord) -> Table:
