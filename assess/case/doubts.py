@@ -215,14 +215,18 @@ def repeated(form: EvidenceForm, table: Table) -> list[Fault]:
     doubts = []
     numbers = [*table.numbers.values(), *table.beyond.values(), *table.below.values()]
     texts = [values for name, values in table.texts.items() if name != "note"]
-    for row, line in enumerate(table.lines.tolist()):
+    # Only rows that name a location named again, or that say two numbers, can repeat another's.
+    _, which, times = np.unique(table.texts["location"], return_inverse=True, return_counts=True)
+    named = table.texts["location"] != ""
+    several = np.sum([~np.isnan(v) for v in numbers], axis=0) >= 2
+    for row in np.flatnonzero((named & (times[which] > 1)) | (~named & several)):
+        line = int(table.lines[row])
         said = tuple(None if np.isnan(v[row]) else float(v[row]) for v in numbers)
         row_key = (*said, *(str(v[row]) for v in texts))
         place = tuple(str(table.texts[name][row]) for name in ("zone", "section", "location"))
         value = float(table.numbers[form.value][row])
         value_key = (*place, value, *(float(table.numbers[name][row]) for name in form.apart))
-        telling = bool(place[2]) or sum(one is not None for one in said) >= 2
-        if telling and row_key in seen_rows:
+        if row_key in seen_rows:
             what = f"the row repeats line {seen_rows[row_key]}"
             doubts.append(Fault(str(table.path), line, what, mend="counted twice? delete one"))
         elif place[2] and np.isfinite(value) and value_key in seen_values:

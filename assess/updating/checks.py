@@ -15,7 +15,10 @@ from assess.updating.stages import StageDraws
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
 
-REPLICATES = 400  # data sets drawn per stage
+REPLICATES = 400  # data sets drawn per stage, fewer of very large ones
+FEWEST = 100
+ELEMENTS = 4_000_000  # simulated values held at a time
+MOST_ELEMENTS = 40_000_000  # simulated values drawn per stage, unless `FEWEST` sets have more
 SHOWN = 2000  # simulated values kept for a picture
 SURPRISING = 0.02  # a two-sided p-value below it is put into words
 
@@ -84,16 +87,31 @@ def data_sets(case: Case, spec: Spec, stages: Sequence[StageDraws], seed: int) -
     found = []
     for number, (key, rows) in enumerate(spec.rows.items()):
         kind = KINDS[key]
-        simulated = {}
+        parts = list(_parts(rows))
+        foretold = [
+            {stage.name: _Foretold(rows.value[here]) for stage in stages} for _, _, here in parts
+        ]
         for stage in stages:
             rng = np.random.default_rng([seed, stage.number, number, 17])
-            values = stage.values()
-            chosen = rng.choice(len(next(iter(values.values()))), REPLICATES, replace=False)
-            picked = {name: draws[chosen] for name, draws in values.items()}
-            simulated[stage.name] = kind.simulate(rows, picked, rng)
-        for survey, zone, here in _parts(rows):
-            found.append(_data_set(kind, rows, survey, zone, here, simulated))
+            for simulated in _simulated(kind, rows, stage, rng):
+                for (_, _, here), by_stage in zip(parts, foretold, strict=True):
+                    by_stage[stage.name].add(simulated[:, here])
+        for (survey, zone, here), by_stage in zip(parts, foretold, strict=True):
+            found.append(_data_set(kind, rows, survey, zone, here, by_stage))
     return found
+
+
+def _simulated(
+    kind: EvidenceKind, rows: Rows, stage: StageDraws, rng: np.random.Generator
+) -> Iterator[FloatArray]:
+    """Draw data sets at one stage, so many at a time that memory stays bounded."""
+    values = stage.values()
+    available = len(next(iter(values.values())))
+    count = min(REPLICATES, max(FEWEST, MOST_ELEMENTS // len(rows.value)), available)
+    chosen = rng.choice(available, count, replace=False)
+    at_a_time = max(1, ELEMENTS // len(rows.value))
+    for part in np.array_split(chosen, -(-count // at_a_time)):
+        yield kind.simulate(rows, {name: draws[part] for name, draws in values.items()}, rng)
 
 
 def _parts(rows: Rows) -> Iterator[tuple[int, int, BoolArray]]:
@@ -109,18 +127,12 @@ def _data_set(
     survey: int,
     zone: int,
     here: BoolArray,
-    simulated: Mapping[str, FloatArray],
+    foretold: Mapping[str, "_Foretold"],
 ) -> DataSet:
     """Compare one data set with its simulations."""
     measured = rows.value[here]
     finite = np.isfinite(measured)
     shown = np.exp if kind.log_scale else np.asarray
-    p_values, predictive = {}, {}
-    for stage, values in simulated.items():
-        mine = values[:, here]
-        p_values[stage] = _p_values(measured, mine)
-        single = mine[np.isfinite(mine)][:SHOWN]
-        predictive[stage] = np.asarray(shown(single), dtype=np.float64)
     names = [rows.places[place] for place in np.unique(rows.place[here])]
     return DataSet(
         kind,
@@ -130,26 +142,56 @@ def _data_set(
         len(measured),
         int((~finite).sum()),
         tuple(name.removeprefix("section ") for name in names if name.startswith("section ")),
-        p_values,
-        predictive,
+        {stage: found.p_values() for stage, found in foretold.items()},
+        {
+            stage: np.asarray(shown(found.singles()), dtype=np.float64)
+            for stage, found in foretold.items()
+        },
     )
 
 
-def _p_values(measured: FloatArray, simulated: FloatArray) -> dict[str, float]:
-    """Share of simulated data sets whose statistic is at least the measured one."""
-    found: dict[str, float] = {}
-    finite = np.isfinite(measured)
-    if finite.sum() >= 3:
+class _Foretold:
+    """Statistics of simulated data sets beside those of the measured one, gathered bit by bit."""
+
+    def __init__(self, measured: FloatArray) -> None:
+        self._measured = measured
+        self._statistics: dict[str, list[FloatArray]] = {name: [] for name in STATISTICS}
+        self._without: list[FloatArray] = []
+        self._singles: list[FloatArray] = []
+        self._wanted = SHOWN
+
+    def add(self, simulated: FloatArray) -> None:
+        """Take in some simulated data sets, (n, n_row)."""
+        finite = np.isfinite(simulated)
+        self._without.append((~finite).mean(axis=1))
         # A simulated data set of fewer than three values has no scatter to compare.
-        usable = simulated[np.isfinite(simulated).sum(axis=1) >= 3]
+        usable = simulated[finite.sum(axis=1) >= 3]
         if len(usable):
             for name, statistic in STATISTICS.items():
-                found[name] = _share(statistic(usable), float(statistic(measured)))
-    if not finite.all():
-        found["share without a value"] = _share(
-            (~np.isfinite(simulated)).mean(axis=1), float((~finite).mean())
-        )
-    return found
+                self._statistics[name].append(statistic(usable))
+        if self._wanted > 0:
+            some = simulated[finite][: self._wanted]
+            self._wanted -= len(some)
+            self._singles.append(some.copy())
+
+    def p_values(self) -> dict[str, float]:
+        """Share of simulated data sets whose statistic is at least the measured one."""
+        found: dict[str, float] = {}
+        finite = np.isfinite(self._measured)
+        if finite.sum() >= 3:
+            for name, statistic in STATISTICS.items():
+                if self._statistics[name]:
+                    simulated = np.concatenate(self._statistics[name])
+                    found[name] = _share(simulated, float(statistic(self._measured)))
+        if not finite.all():
+            found["share without a value"] = _share(
+                np.concatenate(self._without), float((~finite).mean())
+            )
+        return found
+
+    def singles(self) -> FloatArray:
+        """Give some simulated values."""
+        return np.concatenate(self._singles)
 
 
 def _share(simulated: FloatArray, measured: float) -> float:

@@ -25,7 +25,7 @@ from assess.updating.model import build_model, specify
 from assess.updating.sampling import NutpieSampler, Settings
 from tests.verification.cases import base, read
 from tests.verification.check import Check
-from tests.verification.design import Design, Spoil, Values
+from tests.verification.design import Design, Spoil, Values, title
 
 FloatArray = NDArray[np.float64]
 
@@ -97,7 +97,7 @@ def calibrate(design: Design, folder: Path, sets: int = SETS) -> Iterator[Check]
     """Check that ranks are uniform, and that they are not when the data come from elsewhere."""
     calibration = Calibration(design, folder)
     p, worst = smallest_p(calibration.ranks(sets, 1_000))
-    place = design.kind.replace("_", " ")
+    place = title(design)
     names = len(design.variables)
     yield Check(
         SOURCE, place, f"p of uniform ranks, {names} variables, {sets} data sets", None, p, LEVEL,

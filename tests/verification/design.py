@@ -25,9 +25,15 @@ class Design:
     spoil: Spoil
     fault: str
     corrosion: bool = False
+    words: str = ""  # after the name of the kind, where it has several designs
     slow: bool = False  # run only where its group is asked for by name
     zone: Mapping[str, Any] = field(default_factory=dict)  # more keys of the zone ``deck``
     case: Mapping[str, Any] = field(default_factory=dict)  # more keys of the case
+
+
+def title(design: Design) -> str:
+    """Name a design: its kind, and what sets it apart from others of the kind."""
+    return " ".join(filter(None, (design.kind.replace("_", " "), design.words)))
 
 
 def survey(date: str, kind: str, entry: dict[str, Any]) -> dict[str, Any]:

@@ -6,6 +6,7 @@ from pathlib import Path
 
 from tests.verification.calibration import calibrate
 from tests.verification.check import Check
+from tests.verification.design import title
 from tests.verification.designs import DESIGNS
 from tests.verification.first_order import first_order
 from tests.verification.formulas import formulas
@@ -19,14 +20,12 @@ GROUPS: Mapping[str, Group] = {
     "Normal-gamma updating by six cores": normal_gamma,
     "Factors of EN 1990 annex D through the Markov chains": annex_d,
     **{
-        f"Simulation-based calibration: {design.kind.replace('_', ' ')}": partial(calibrate, design)
+        f"Simulation-based calibration: {title(design)}": partial(calibrate, design)
         for design in DESIGNS
     },
 }
 
 # Calibrations that take many minutes: `python -m tests.verification WORDS` runs them.
 SLOW = frozenset(
-    f"Simulation-based calibration: {design.kind.replace('_', ' ')}"
-    for design in DESIGNS
-    if design.slow
+    f"Simulation-based calibration: {title(design)}" for design in DESIGNS if design.slow
 )
