@@ -54,13 +54,28 @@ class CoverEntry(EvidenceEntry):
     """What a survey says of its cover readings."""
 
     meter: Meter
+    outer_bar: Length | None = Field(
+        None,
+        description="Diameter of the outer bars (links, distribution bars), where the table has "
+        "readings of the layer within them. [mm]",
+    )
+    layer_gap: Annotated[float, InUnit("mm", "a standard deviation", at_least=0.0)] = Field(
+        2.0,
+        description="Standard deviation of how far inner bars stand off the outer ones. [mm] "
+        "Engineering judgement, no source.",
+    )
+    exposed_error: Length = Field(
+        1.0,
+        description="Standard deviation of a cover measured at a bar laid bare. [mm] "
+        "Engineering judgement, no source.",
+    )
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Groups:
     """Readings that need nothing but their sufficient statistics, by survey, zone and meter."""
 
-    key: NDArray[np.int64]  # (n_group, 3): stage, zone, meter
+    key: NDArray[np.int64]  # (n_group, 4): stage, zone, meter, number of the reading variance
     of_row: IntArray  # group of each row
 
 
@@ -75,6 +90,11 @@ class Cover(EvidenceKind):
     of squares alone; rows of one section or location share its cover, integrated out
     (`nested_log_likelihood`). A reading ">80" says that the meter would have read more than 80:
     it enters with the upper tail probability, as a place of its own.
+
+    The local cover is that of the outer bars. A bar of the inner layer lies deeper by the stated
+    diameter of the outer ones, and scatters by how the layers touch. A bar that was read and then
+    laid bare gives two readings of one local cover, the second without bias: many of them tell
+    the meter's bias from the zone's cover.
     """
 
     form = EvidenceForm(
@@ -84,12 +104,27 @@ class Cover(EvidenceKind):
         columns=(
             Column(
                 "cover",
-                "cover to the outermost bar, as read",
+                "cover of a bar, as read",
                 "mm",
                 above=0.0,
                 below=400.0,
                 usual=(3.0, 150.0),
                 censored=True,
+            ),
+            Column(
+                "layer",
+                "layer of bars that was read, the outer one if left empty",
+                required=False,
+                choices=("outer", "inner"),
+            ),
+            Column(
+                "exposed cover",
+                "cover of the same bar measured where it was laid bare",
+                "mm",
+                required=False,
+                above=0.0,
+                below=400.0,
+                usual=(3.0, 150.0),
             ),
         ),
         value="cover",
@@ -98,16 +133,24 @@ class Cover(EvidenceKind):
     log_scale = False
     assumption = (
         "Covers of a zone are normal from place to place; a meter has one unknown bias for all of "
-        "its readings and a stated scatter; readings beyond its range count as at least that much."
+        "its readings and a stated scatter; readings beyond its range count as at least that much. "
+        "Cover is that of the outer bars; readings of the inner layer count less their diameter."
     )
     carrier = "cover_mean"
 
     def faults(self, case: Case) -> Sequence[Fault]:
-        """Find meters that are said to have another bias than before: it is one and the same."""
+        """Find meters of which two biases are stated, and inner bars without outer ones."""
         first: dict[str, tuple[float, int]] = {}
         found = []
         for _, item in gather(case, self.form.key):
-            meter = cast(CoverEntry, item.entry).meter
+            entry = cast(CoverEntry, item.entry)
+            meter = entry.meter
+            inner = np.flatnonzero(item.table.texts["layer"] == "inner")
+            if entry.outer_bar is None and len(inner):
+                what = "readings of the inner layer need the diameter of the outer bars"
+                mend = "state outer_bar in the entry of this table"
+                line = int(item.table.lines[inner[0]])
+                found.append(Fault(str(item.table.path), line, what, "inner", "", mend))
             keys = (*item.keys, "meter", "bias")
             bias, line = first.setdefault(meter.name, (meter.bias, case.document.line(keys)))
             if bias != meter.bias:
@@ -126,27 +169,35 @@ class Cover(EvidenceKind):
             return None
         meters = self._meters(case)
         names = list(meters)
-        beyond = [item.table.beyond["cover"] for _, item in items]
-        value = [item.table.numbers["cover"] for _, item in items]
         entries = [cast(CoverEntry, item.entry) for _, item in items]
-        counts = [len(v) for v in value]
+        inner = [item.table.texts["layer"] == "inner" for _, item in items]
+        offset = [i * (e.outer_bar or 0.0) for i, e in zip(inner, entries, strict=True)]
+        beyond = [item.table.beyond["cover"] for _, item in items]
         meter = [
-            np.full(n, float(names.index(entry.meter.name)))
-            for n, entry in zip(counts, entries, strict=True)
+            np.full(len(i), float(names.index(e.meter.name)))
+            for i, e in zip(inner, entries, strict=True)
         ]
-        return build_rows(
+        reach = _reach(np.concatenate(meter), np.concatenate(beyond))
+        rows = build_rows(
             items,
-            value,
+            [item.table.numbers["cover"] - o for (_, item), o in zip(items, offset, strict=True)],
             {
-                "beyond": beyond,
-                "reach": _reach(np.concatenate(meter), np.concatenate(beyond)),
+                "beyond": [b - o for b, o in zip(beyond, offset, strict=True)],
+                "reach": [reach - np.concatenate(offset)],
                 "meter": meter,
                 "variance": [
-                    np.full(n, entry.meter.scatter**2)
-                    for n, entry in zip(counts, entries, strict=True)
+                    e.meter.scatter**2 + i * e.layer_gap**2
+                    for i, e in zip(inner, entries, strict=True)
                 ],
             },
         )
+        exposed = np.concatenate(
+            [i.table.numbers["exposed cover"] - o for (_, i), o in zip(items, offset, strict=True)]
+        )
+        error = np.concatenate(
+            [e.exposed_error**2 + i * e.layer_gap**2 for i, e in zip(inner, entries, strict=True)]
+        )
+        return _with_exposed(rows, exposed, error, len(names))
 
     def _meters(self, case: Case) -> dict[str, Meter]:
         """Name the meters of a case in order of first use."""
@@ -296,6 +347,32 @@ class Cover(EvidenceKind):
         return (_beyond_reach(mean, sd, limit, np.sqrt(rows.extra["variance"][beyond])),)
 
 
+def _with_exposed(rows: Rows, exposed: FloatArray, variance: FloatArray, without_bias: int) -> Rows:
+    """Add a reading without bias, at the same place, for each row whose bar was laid bare."""
+    opened = np.flatnonzero(np.isfinite(exposed))
+    if len(opened) == 0:
+        return rows
+    every = np.concatenate([np.arange(len(rows.value)), opened])
+    more: dict[str, FloatArray | float] = {
+        "beyond": np.nan,
+        "reach": np.inf,
+        "meter": float(without_bias),
+        "variance": variance[opened],
+    }
+    count = len(opened)
+    return replace(
+        rows,
+        value=np.concatenate([rows.value, exposed[opened]]),
+        stage=rows.stage[every],
+        zone=rows.zone[every],
+        place=rows.place[every],
+        extra={
+            name: np.concatenate([rows.extra[name], np.broadcast_to(value, count)])
+            for name, value in more.items()
+        },
+    )
+
+
 def _bias_of(
     rows: Rows, chosen: NDArray[np.bool_], values: Mapping[str, FloatArray], count: int
 ) -> FloatArray:
@@ -339,11 +416,14 @@ def _biases(values: Mapping[str, Numeric], meter: IntArray) -> Numeric:
 
 
 def _groups(rows: Rows) -> _Groups:
-    """Group rows by stage, zone and meter."""
+    """Group rows by stage, zone, meter and variance of reading."""
     meter = rows.extra["meter"].astype(np.int64)
-    key, of_row = np.unique(
-        np.column_stack([rows.stage, rows.zone, meter]), axis=0, return_inverse=True
-    )
+    _, variance = np.unique(rows.extra["variance"], return_inverse=True)
+    parts = (rows.stage, rows.zone, meter, variance)
+    sizes = [int(part.max()) + 1 for part in parts]
+    # One number for each combination: sorting numbers is ten times faster than sorting rows.
+    joined, of_row = np.unique(np.ravel_multi_index(parts, sizes), return_inverse=True)
+    key = np.column_stack(np.unravel_index(joined, sizes))
     return _Groups(key.astype(np.int64), of_row.reshape(-1).astype(np.int64))
 
 
@@ -378,7 +458,7 @@ def _limit_of_row(
     return np.asarray(match.argmax(axis=1), dtype=np.int64)
 
 
-def _reach(meter: FloatArray, beyond: FloatArray) -> list[FloatArray]:
+def _reach(meter: FloatArray, beyond: FloatArray) -> FloatArray:
     """Give the cover at which each row is, or would be, censored; inf if never.
 
     A reading within the meter's range shares the least limit that the meter shows elsewhere.
@@ -388,4 +468,4 @@ def _reach(meter: FloatArray, beyond: FloatArray) -> list[FloatArray]:
         mine = meter == m
         shown = beyond[mine & np.isfinite(beyond)]
         reach[mine] = np.min(shown, initial=np.inf)
-    return [np.where(np.isfinite(beyond), beyond, reach)]
+    return np.where(np.isfinite(beyond), beyond, reach)
