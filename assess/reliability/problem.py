@@ -106,9 +106,14 @@ def section_state(
     measured: set[str] = set()
     for key, kind in KINDS.items():
         rows = spec.rows.get(key)
-        found = kind.local(rows, stage, entry.name, entry.zone, values)
-        locals_ += found
-        kinds += [key] * len(found)
+        for model in kind.local(rows, stage, entry.name, entry.zone, values):
+            earlier = [i for i, old in enumerate(locals_) if set(old.names) & set(model.names)]
+            if earlier:  # it says what that kind knew too: the variable stays that kind's
+                locals_[earlier[0]] = model
+                measured.add(kinds[earlier[0]])
+            else:
+                locals_.append(model)
+                kinds.append(key)
         place = None if rows is None else rows.place_of(entry.name)
         if (
             rows is not None

@@ -15,6 +15,7 @@ from assess.reliability.problem import (
     dimensions,
     section_state,
 )
+from assess.updating.kind import Rows
 from assess.updating.kinds import KINDS
 from assess.updating.model import Spec
 from assess.updating.stages import StageDraws
@@ -141,13 +142,45 @@ def kind_weights(
     chosen = np.unique(np.linspace(0, count - 1, min(THINNED, count)).astype(np.int64))
     values = {name: series[chosen] for name, series in draws.values().items()}
     found: dict[str, FloatArray | None] = {}
-    for key, rows in spec.rows.items():
-        kind = KINDS[key]
-        data = kind.data(rows, draws.number)
-        log_likelihood = np.asarray(kind.log_likelihood(rows, values, data), dtype=np.float64)
-        smoothed, shape = array_stats.psislw(-log_likelihood)
+    for key in spec.rows:
+        smoothed, shape = array_stats.psislw(-lost_log_likelihood(spec, key, values, draws.number))
         found[key] = np.exp(smoothed - smoothed.max()) if float(shape) <= WORST_SHAPE else None
     return chosen, found
+
+
+def lost_log_likelihood(
+    spec: Spec, key: str, values: Mapping[str, FloatArray], stage: int
+) -> FloatArray:
+    """Log-likelihood that leaving one kind out takes away, of each draw.
+
+    Parameters
+    ----------
+    spec : Spec
+        Prior and measurements.
+    key : str
+        Of the kind.
+    values : mapping of str to ndarray (n_draw,)
+        Draws of all common variables.
+    stage : int
+        Number of surveys that count.
+
+    Returns
+    -------
+    ndarray, shape (n_draw,)
+        The kind's own log-likelihood, and what that of kinds that are given it changes by.
+    """
+
+    def of(name: str, rows: Rows) -> FloatArray:
+        kind = KINDS[name]
+        found = kind.log_likelihood(rows, values, kind.data(rows, stage))
+        return np.asarray(found, dtype=np.float64)
+
+    lost = of(key, spec.rows[key])
+    for name, rows in spec.rows.items():
+        other = KINDS[name].without(rows, key)
+        if other is not rows:
+            lost = lost + of(name, rows) - of(name, other)
+    return lost
 
 
 def section_teaching(

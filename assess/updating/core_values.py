@@ -1,5 +1,6 @@
 """Cores as tested to logarithms of strength in the structure, with the errors of the factors."""
 
+from collections.abc import Mapping
 from typing import NamedTuple
 
 import numpy as np
@@ -12,6 +13,7 @@ from assess.mechanics.core_corrections_en import (
     bar_correction,
     length_correction_en,
 )
+from assess.updating.kind import Numeric, Rows
 
 FloatArray = NDArray[np.float64]
 
@@ -60,3 +62,13 @@ def core_values(table: Table, rule: str) -> CoreValues:
     for_bars = bar_correction(diameter, length, bars, distances)
     loading[:, 4] = BAR_UNCERTAINTY * (for_bars - 1.0)
     return CoreValues(np.log(strength * factor * for_bars), loading)
+
+
+def correction_shift(rows: Rows, values: Mapping[str, Numeric]) -> Numeric:
+    """Sum the errors of the correction factors of each core, last axis row."""
+    shift: Numeric = 0.0
+    for k, name in enumerate(CORRECTIONS):
+        error = values.get(f"cores.{name}_correction")
+        if error is not None:
+            shift = shift + error[..., None] * rows.extra["loading"][:, k]
+    return shift

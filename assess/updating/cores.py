@@ -16,7 +16,7 @@ from assess.mechanics.core_corrections import DIAMETER_RANGE
 from assess.probability.marginals import make_marginal
 from assess.updating.core_codes import code_strengths
 from assess.updating.core_faults import impossible_bars, uncorrectable_cores
-from assess.updating.core_values import BARS, CORRECTIONS, core_values
+from assess.updating.core_values import BARS, CORRECTIONS, core_values, correction_shift
 from assess.updating.kind import (
     CodeStrength,
     EvidenceKind,
@@ -189,22 +189,13 @@ class Cores(EvidenceKind):
             "cores_precision": np.where(rows.stage <= stage, rows.extra["precision"], 0.0),
         }
 
-    def _shift(self, rows: Rows, values: Mapping[str, Numeric]) -> Numeric:
-        """Sum the correction errors of each core, last axis row."""
-        shift: Numeric = 0.0
-        for k, name in enumerate(CORRECTIONS):
-            error = values.get(f"cores.{name}_correction")
-            if error is not None:
-                shift = shift + error[..., None] * rows.extra["loading"][:, k]
-        return shift
-
     def log_likelihood(
         self, rows: Rows, values: Mapping[str, Numeric], data: Mapping[str, Numeric]
     ) -> Numeric:
         """Log-likelihood of all active cores, local strengths integrated out."""
         log_mean = op.log(zone_values(rows, values, "concrete_mean"))
         variance = zone_values(rows, values, "concrete_scatter") ** 2
-        reading = data["cores_value"] - self._shift(rows, values)
+        reading = data["cores_value"] - correction_shift(rows, values)
         heavy = np.unique(rows.place[np.isfinite(rows.extra["freedom"])])
         residual = reading - log_mean[..., rows.zone]
         plain = ~np.isin(rows.place, heavy)
@@ -243,7 +234,7 @@ class Cores(EvidenceKind):
         error = np.where(heavy, error / np.sqrt(rng.chisquare(degrees, shape) / degrees), error)
         return np.asarray(
             local[:, rows.place]
-            + self._shift(rows, values)
+            + correction_shift(rows, values)
             + error / np.sqrt(rows.extra["precision"])
         )
 
@@ -263,7 +254,7 @@ class Cores(EvidenceKind):
         if rows is None or place is None:
             return (population,)
         here = (rows.place == place) & (rows.stage <= stage)
-        reading = rows.value - self._shift(rows, values)
+        reading = rows.value - correction_shift(rows, values)
         freedom = rows.extra["freedom"][here]
         if np.isfinite(freedom).any():
             value = np.broadcast_to(reading, (len(population.mean), len(rows.value)))[:, here]

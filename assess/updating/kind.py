@@ -122,6 +122,10 @@ class EvidenceKind(ABC):
         """Put other measured values in place of those of the rows (same design)."""
         return replace(rows, value=value)
 
+    def without(self, rows: Rows, _key: str) -> Rows:
+        """Give the rows as they would be had another kind not been measured: the same, mostly."""
+        return rows
+
     def code_strengths(self, rows: Rows) -> Sequence[CodeStrength]:
         """Give characteristic values as codes derive them from the measurements alone."""
         return ()

@@ -16,7 +16,9 @@ from assess.updating.delamination import Delamination
 from assess.updating.dimensions import Dimensions
 from assess.updating.half_cell import HalfCell
 from assess.updating.kind import EvidenceKind
+from assess.updating.pulse_velocity import PulseVelocity
 from assess.updating.quantities import Quantities
+from assess.updating.rebound import Rebound
 from assess.updating.section_loss import SectionLoss
 from assess.updating.yield_strength import YieldStrength
 
@@ -36,7 +38,9 @@ OWN: tuple[EvidenceKind, ...] = (
     Delamination(),
     Dimensions(),
     HalfCell(),
+    PulseVelocity(),
     Quantities(),
+    Rebound(),
     SectionLoss(),
     YieldStrength(),
 )

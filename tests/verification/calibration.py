@@ -14,6 +14,7 @@ References
 
 from collections.abc import Iterator
 from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -47,7 +48,10 @@ class Calibration:
         case = base(corrosion=design.corrosion, surveys=design.surveys)
         case["zones"]["deck"] |= design.zone
         case |= design.case
-        self.spec = specify(read(folder, case, design.tables))
+        spec = specify(read(folder, case, design.tables))
+        # Readings may be given those of other kinds, whose own likelihood stays out: variables
+        # are drawn from the prior, not from what those others say.
+        self.spec = replace(spec, rows={design.kind: spec.rows[design.kind]})
         self.stages = len(design.surveys)
         self.sampler = NutpieSampler(self.spec, build_model(self.spec, self.stages))
 
