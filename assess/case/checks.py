@@ -224,7 +224,6 @@ def _whole(value: Any) -> int | None:
 def _survey_dates(document: Document, today: date) -> tuple[list[Fault], list[Fault]]:
     built, assessed, _ = _years(document)
     faults, doubts = [], []
-    seen: dict[date, int] = {}
     for index, survey in items_at(document.data, "surveys"):
         keys = ("surveys", index, "date")
         day = read_or_none(_ISO_DATE.validate_python, survey.get("date"))
@@ -241,10 +240,6 @@ def _survey_dates(document: Document, today: date) -> tuple[list[Fault], list[Fa
         elif day > today:
             what = f"the survey lies in the future (today is {today.isoformat()})"
             doubts.append(document.fault(keys, what, given=given, mend="check the date"))
-        if day in seen:
-            what = f"the survey of line {seen[day]} has the same date"
-            faults.append(document.fault(keys, what, given=given, mend="make them one survey"))
-        seen.setdefault(day, document.line(keys))
     return faults, doubts
 
 

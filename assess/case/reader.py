@@ -128,8 +128,7 @@ def read_case(path: Path, vocabulary: Vocabulary, today: date | None = None) -> 
             doubts += outliers(form, one.entry, one.table, one.zone)
             doubts += form.doubts(one.entry, one.table)
         if not wrong:  # names that lead nowhere would lead further checks astray
-            surveys = sorted(spec.surveys, key=lambda survey: survey.date)
-            stages = tuple((survey.stage, survey.date) for survey in surveys)
+            stages = tuple((name, day) for day, name in spec.stages().items())
             hashes = _hashes(path, evidence)
             readable = Case(path, spec, tuple(evidence), hashes, stages, document)
     all_faults = tuple(sorted(set(faults)))
@@ -147,16 +146,27 @@ def _validated(document: Document, vocabulary: Vocabulary) -> tuple[CaseSpec | N
 
 def _evidence(spec: CaseSpec, tables: "_Tables") -> list[Evidence]:
     """Join what the model says of each table with the rows that were read."""
-    found = []
+    found, stages = [], spec.stages()
     for i, survey in enumerate(spec.surveys):
         age = (survey.date - spec.structure.built).days / DAYS_PER_YEAR
         for kind, j, entry in survey.entries():
             read = tables.by_place.get((i, kind, j))
             if read is not None:
                 table, zone, section = read
-                location = table.texts["location"]
-                one = (survey.stage, survey.date, age, kind, entry, table, zone, section, location)
-                found.append(Evidence(*one, _entry_keys(tables.document, i, kind, j)))
+                found.append(
+                    Evidence(
+                        stages[survey.date],
+                        survey.date,
+                        age,
+                        kind,
+                        entry,
+                        table,
+                        zone,
+                        section,
+                        table.texts["location"],
+                        _entry_keys(tables.document, i, kind, j),
+                    )
+                )
     return sorted(found, key=lambda one: one.date)
 
 

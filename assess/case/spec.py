@@ -256,11 +256,6 @@ class Survey(Closed):
     date: IsoDate = Field(description="day of the visit, year-month-day")
     name: Text | None = Field(None, description="name of the stage; the date if left out")
 
-    @property
-    def stage(self) -> str:
-        """Name the state of knowledge after this survey."""
-        return self.name or self.date.isoformat()
-
     def entries(self) -> Iterator[tuple[str, int, EvidenceEntry]]:
         """Go through (kind, position in its list, entry)."""
         for kind in type(self).model_fields:
@@ -413,6 +408,16 @@ class CaseSpec(Closed):
     )
     decision: Decision = Field(description="what is to be decided")
     sampling: Sampling = Field(default_factory=lambda: Sampling(), description="how it is computed")
+
+    def stages(self) -> dict[date, str]:
+        """Name the state of knowledge after each date of surveys, in order of date.
+
+        Surveys of one date lead to one state; it bears the names of those that have one.
+        """
+        names: dict[date, list[str]] = {}
+        for survey in sorted(self.surveys, key=lambda one: one.date):
+            names.setdefault(survey.date, []).extend([survey.name] if survey.name else [])
+        return {day: " and ".join(found) or day.isoformat() for day, found in names.items()}
 
     def sections(self) -> dict[str, SectionEntry]:
         """Give all sections by name, in the order of the file."""

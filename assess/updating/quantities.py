@@ -63,7 +63,15 @@ class Quantities(EvidenceKind):
         title="Densities and thicknesses, over their stated means",
         entry=QuantitiesEntry,
         columns=tuple(
-            Column(name, f"{name} as read", unit, required=False, above=0.0, usual=_USUAL[name])
+            Column(
+                name,
+                f"{name} as read",
+                unit,
+                required=False,
+                above=0.0,
+                below=20.0 * _USUAL[name][1],  # nothing built is so heavy or so thick
+                usual=_USUAL[name],
+            )
             for name, unit in MEASURED.items()
         ),
         value=next(iter(MEASURED)),

@@ -13,6 +13,7 @@ from assess.case.forms import EvidenceEntry, EvidenceForm, Table, Vocabulary
 from assess.case.reader import CaseReading, load_case, read_case
 from assess.case.spec import GradedConcrete, MeasuredConcrete, NominalCover, ScatteredCover
 from assess.errors import CaseError, Fault
+from tests.verification import cases
 
 Read = Callable[..., CaseReading]
 FaultOf = Callable[..., str]
@@ -258,7 +259,6 @@ FAULTS = [
         "given 1969-06-12, allowed 1971-01-01 or later",
     ),
     (("2019-06-12", "2027-06-12"), "after the year of the assessment, given 2027.* up to 2026"),
-    (("2019-06-12", "2014-03-01"), "case.yaml:25: .* survey of line 20 has the same date"),
     (("2019-06-12", "12.06.2019"), "not a date, given 12.06.2019, allowed .* 2019-06-12"),
     (("2019-06-12", "2019-02-30"), "there is no such date, given 2019-02-30"),
     (("built: 1971", "built: 71"), "not a year of construction, given 71, allowed 1800 to 2100"),
@@ -553,3 +553,19 @@ def test_any_value_in_any_place_is_read_or_refused(
     path.write_text(yaml.safe_dump(data), encoding="utf-8")
     reading = read_case(path, vocabulary, date(2026, 1, 1))
     assert (reading.case is None) == bool(reading.faults)
+
+
+def test_surveys_of_one_date_lead_to_one_state(make_case):
+    cover = {"table": "c.csv", "zone": "deck", "meter": {"name": "A", "bias": 0, "scatter": 2}}
+    cover["meter"]["scatter"] = "2 mm"
+    surveys = [
+        {"date": "2019-06-12", "name": "scan", "cover": cover},
+        {"date": "2014-03-01", "cover": cover},
+        {"date": "2019-06-12", "cover": cover},
+        {"date": "2019-06-12", "name": "second scan", "cover": cover},
+    ]
+    case = make_case(cases.base(surveys=surveys), {"c.csv": "cover [mm]\n40\n44\n"})
+    assert [name for name, _ in case.stages] == ["2014-03-01", "scan and second scan"]
+    assert [item.survey for item in case.evidence] == [
+        "2014-03-01", "scan and second scan", "scan and second scan", "scan and second scan",
+    ]  # fmt: skip
