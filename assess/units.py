@@ -26,6 +26,7 @@ CUSTOMARY: dict[str, tuple[str, ...]] = {
     "yr": ("yr", "month", "week", "day"),
     "g/mm": ("g/mm", "kg/m", "lb/ft"),
     "mm^2/yr": ("mm^2/yr", "m^2/s", "cm^2/s"),
+    "km/s": ("km/s", "m/s", "ft/s"),
     "mm/yr^0.5": ("mm/yr^0.5", "cm/yr^0.5", "in/yr^0.5"),
     NONE: ("-", "%"),
 }

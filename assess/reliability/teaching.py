@@ -173,8 +173,10 @@ def lost_log_likelihood(
     def of(name: str, rows: Rows) -> FloatArray:
         kind = KINDS[name]
         found = kind.log_likelihood(rows, values, kind.data(rows, stage))
-        return np.asarray(found, dtype=np.float64)
+        # A kind that tells no common variable anything has one number for all draws.
+        return np.broadcast_to(np.asarray(found, dtype=np.float64), count)
 
+    count = len(next(iter(values.values())))
     lost = of(key, spec.rows[key])
     for name, rows in spec.rows.items():
         other = KINDS[name].without(rows, key)

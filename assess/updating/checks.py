@@ -37,6 +37,7 @@ class DataSet:
     values: FloatArray  # finite ones, in the unit shown
     count: int
     missing: int  # censored, or none found
+    simulated: int  # data sets drawn per stage
     sections: tuple[str, ...]
     p_values: Mapping[str, Mapping[str, float]]
     predictive: Mapping[str, FloatArray]
@@ -141,6 +142,7 @@ def _data_set(
         np.asarray(shown(measured[finite]), dtype=np.float64),
         len(measured),
         int((~finite).sum()),
+        min(found.count for found in foretold.values()),
         tuple(name.removeprefix("section ") for name in names if name.startswith("section ")),
         {stage: found.p_values() for stage, found in foretold.items()},
         {
@@ -159,6 +161,11 @@ class _Foretold:
         self._without: list[FloatArray] = []
         self._singles: list[FloatArray] = []
         self._wanted = SHOWN
+
+    @property
+    def count(self) -> int:
+        """Number of simulated data sets so far."""
+        return sum(len(part) for part in self._without)
 
     def add(self, simulated: FloatArray) -> None:
         """Take in some simulated data sets, (n, n_row)."""
@@ -220,21 +227,53 @@ def surprises(sets: Sequence[DataSet], stage_names: Sequence[str]) -> list[tuple
         before, after = stage_names[item.stage - 1], stage_names[item.stage]
         for statistic, value in item.p_values[before].items():
             if min(value, 1.0 - value) < SURPRISING / 2:
+                side, chance = odds(value, item.simulated)
                 words.append(
                     (
                         subject,
-                        f"The {statistic} of the data was hardly foretold before this survey "
-                        f"(p = {value:.3f} at stage {before}): prior and data disagree; check "
-                        "the prior's source and the table.",
+                        f"The {statistic} is {side} than was to be expected before this survey: "
+                        f"{chance} simulated surveys had one as {side.replace('er', '')}. Prior "
+                        "and data disagree; check the prior's source and the table.",
                     )
                 )
         for statistic, value in item.p_values[after].items():
             if min(value, 1.0 - value) < SURPRISING / 2:
+                side, chance = odds(value, item.simulated)
                 words.append(
                     (
                         subject,
-                        f"The {statistic} of the data is not reproduced after this survey "
-                        f"(p = {value:.3f}): the model does not describe these data well.",
+                        f"The {statistic} is {side} than the model gives even after this survey: "
+                        f"{chance} simulated surveys had one as {side.replace('er', '')}. The "
+                        "model does not describe these data well.",
                     )
                 )
     return words
+
+
+def odds(p_value: float, simulated: int) -> tuple[str, str]:
+    """Say on which side a measured statistic lies, and how rare that is among simulated ones.
+
+    Parameters
+    ----------
+    p_value : float
+        Share of simulated statistics that are at least the measured one.
+    simulated : int
+        How many there were.
+
+    Returns
+    -------
+    side, chance : str
+        Such as ``"higher"`` and ``"1 in 130"``, or ``"none of 400"``.
+
+    Examples
+    --------
+    >>> odds(0.0075, 400), odds(1.0, 400)
+    (('higher', '1 in 130'), ('lower', 'none of 400'))
+    """
+    rare = min(p_value, 1.0 - p_value)
+    side = "higher" if p_value < 0.5 else "lower"
+    if rare * simulated < 0.5:
+        return side, f"none of {simulated}"
+    number = 1.0 / rare
+    digits = 10 ** max(0, int(np.log10(number)) - 1)
+    return side, f"1 in {round(number / digits) * digits:g}"

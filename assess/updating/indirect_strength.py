@@ -1,19 +1,22 @@
-"""What rebound number and pulse velocity share as evidence: devices, pairs, published curves."""
+"""What indirect tests of strength have in common: devices, their lines, and pairs with cores."""
 
 from abc import abstractmethod
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
-from typing import Any, ClassVar, cast
+from dataclasses import fields, replace
+from typing import Annotated, Any, ClassVar, cast
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import Field
+from pydantic import AfterValidator, Field
 
-from assess.case.forms import EvidenceEntry
+from assess.case.distributions import Distribution, NumberDistribution, distribution_of
+from assess.case.forms import Closed, EvidenceEntry
 from assess.case.processes import only_positive
-from assess.case.reader import Case
+from assess.case.quantities import InUnit
+from assess.case.reader import Case, Evidence
 from assess.errors import Fault
 from assess.updating import strength_places
+from assess.updating.indirect_faults import curve_faults, uncounted_readings
 from assess.updating.kind import (
     EvidenceKind,
     FloatArray,
@@ -21,184 +24,152 @@ from assess.updating.kind import (
     Rows,
     build_rows,
     gather,
-    place_keys,
 )
 from assess.updating.local import LocalModel
-from assess.updating.measuring import catalogue_variable, restated_faults
-from assess.updating.strength_places import PairedRows, variable_name
+from assess.updating.measuring import restated_faults
+from assess.updating.strength_places import StrengthRows
 from assess.updating.variables import Variable
 
-FEWEST_PAIRS = 1
-WORDS = {
-    "level": ("at a strength of 30 MPa", "$a$"),
-    "slope": ("for a unit of ln strength", "$b$"),
-    "scatter": ("scatter of places about the line", "$s$"),
-}
+EN_13791 = "EN 13791"
+PositiveNumberDistribution = Annotated[NumberDistribution, AfterValidator(only_positive)]
+ReadingCount = Annotated[float, InUnit("-", "a number of readings", at_least=1.0)]
+
+
+class Device(Closed):
+    """A rebound hammer, or a pulse velocity tester."""
+
+    name: str = Field(
+        description="Readings of one name share one line between reading and strength. Concretes "
+        "that differ in aggregate, age or carbonation want a name each."
+    )
+    source: str = Field("", description="Calibration record.")
+
+
+class StatedLine(Closed):
+    """The line of a device as the engineer states it: ln of the reading against ln of strength."""
+
+    slope: PositiveNumberDistribution = Field(
+        description="Growth of ln of the reading with ln of the strength. [-]"
+    )
+    scatter: PositiveNumberDistribution = Field(
+        description="Standard deviation of ln of the reading from place to place at one strength. "
+        "[-]"
+    )
 
 
 class IndirectEntry(EvidenceEntry):
-    """What a survey says of an indirect test."""
+    """What a survey says of its indirect readings, beside what the kind adds."""
 
-    device: str = Field(
-        "device",
-        pattern=r"^[^.]+$",
-        description="Name of the device with its operator's way of using it: readings of one name "
-        "share one line.",
-    )
-    curve: str | None = Field(
-        None,
-        description="'published' where no cores were taken at places of these readings: the line "
-        "of the literature then counts with its full uncertainty.",
-        pattern="^published$",
-    )
-    readings: float = Field(
-        1.0, ge=1.0, description="Number of readings that each row is the mean of."
-    )
+    device: Device
 
 
 class IndirectStrength(EvidenceKind):
-    r"""Readings that rise with strength: y = a + b (ln f - ln 30 MPa) + departure + error.
+    r"""Indirect strength: ln reading = ln a + b (ln f - ln 30 MPa) + place's departure + error.
 
     Notes
     -----
-    a, b and the scatter of the departures are common to all readings of a device and have
-    published priors; places that have cores too teach them, all other places are read by what
-    they have become. The departure of a place from the line (moisture, carbonation, aggregate)
-    stays the same in repeated readings there, the error of reading averages out. Local strengths
-    integrate out in closed form, together with cores (`strength_places.log_likelihood`).
+    Level a (the reading at a strength of 30 MPa), slope b and scatter s belong to the device.
+    Readings of a device at one place share its departure :math:`\delta \sim N(0, s^2)` from the
+    line (moisture, carbonation, aggregate); a reading has an error of its own, the stated
+    coefficient of variation over the square root of the number of single readings behind it. A
+    line in the logarithms is a power law, the form of conversion models that keeps both sides
+    positive [1]_. How places that cores, too, know of enter: `strength_places.log_likelihood`.
 
     References
     ----------
-    .. [1] EN 13791:2019, clause 8.2: indirect testing with at least eight pairs (from memory).
-    .. [2] ACI 228.1R, In-Place Methods to Estimate Concrete Strength (from memory).
+    .. [1] D. Breysse, Nondestructive evaluation of concrete strength: an historical review and a
+       new perspective by combining NDT methods, Constr. Build. Mater. 33 (2012) 139-163.
     """
 
-    column: ClassVar[str]  # of the table
-    before: ClassVar[tuple[str, ...]]  # kinds that this one's density is given
-    carrier = ""
+    log_scale = True
+    carrier = "concrete_mean"
+
+    symbol: ClassVar[str]
 
     @abstractmethod
-    def transformed(self, reading: FloatArray) -> FloatArray:
-        """Give readings on the scale on which they are linear in ln strength."""
+    def earlier(self, case: Case) -> dict[str, Rows]:
+        """Gather what the kinds before this one have measured."""
 
-    @abstractmethod
-    def reading_variance(self, entry: Any) -> float:
-        """Variance of the error of one row, on that scale."""
+    def faults(self, case: Case) -> Sequence[Fault]:
+        """Find devices without a line, and with more than one; readings that are no number."""
+        found: list[Fault] = list(curve_faults(case, self.form))
+        for _, item in gather(case, self.form.key):
+            found += uncounted_readings(item.table)
+        return found or list(restated_faults(case, self.variables(case), only_positive))
 
-    @abstractmethod
-    def earlier(self, case: Case) -> tuple[tuple[str, Rows], ...]:
-        """Gather the readings of the kinds before this one."""
+    def variables(self, case: Case) -> tuple[Variable, ...]:
+        """Give level, slope and scatter of each device."""
+        return tuple(
+            Variable(
+                name=f"{self.form.key}.{name}.{what}",
+                label=f"{words}, {name}",
+                symbol=f"${symbol}_\\mathrm{{{self.symbol}}}$",
+                unit=self.unit if what == "level" else "-",
+                zone="",
+                source=stated.source,
+                marginal=stated.marginal(),
+            )
+            for name, curve in devices(case, self.form.key).items()
+            for what, words, symbol in (
+                ("level", f"{self.form.value} at 30 MPa", "a"),
+                ("slope", f"growth of ln {self.form.value} with ln strength", "b"),
+                ("scatter", f"scatter of ln {self.form.value} from place to place", "s"),
+            )
+            for stated in (self._stated(curve, what),)
+        )
 
-    def rows(self, case: Case) -> PairedRows | None:
-        """Gather the readings of all surveys."""
+    def _stated(self, curve: object, what: str) -> Distribution:
+        """Give the prior of one variable: stated, of the published curve, or wide for pairs."""
+        if isinstance(curve, StatedLine):
+            return cast(Distribution, getattr(curve, what))
+        basis = f"by {EN_13791}" if curve == EN_13791 else "left to pairs"
+        entry = f"{self.form.value} {what} {basis}"
+        return distribution_of(self.unit if what == "level" else "-").model_validate(
+            {"catalogue": entry}
+        )
+
+    def rows(self, case: Case) -> StrengthRows | None:
+        """Gather the readings of all surveys, and those of the kinds before."""
         items = gather(case, self.form.key)
         if not items:
             return None
-        entries = [cast(IndirectEntry, item.entry) for _, item in items]
-        devices = tuple(dict.fromkeys(entry.device for entry in entries))
-        counts = [len(item.zone) for _, item in items]
-        rows = build_rows(
-            items,
-            [self.transformed(item.table.numbers[self.column]) for _, item in items],
-            {
-                "device": [
-                    np.full(n, float(devices.index(e.device)))
-                    for n, e in zip(counts, entries, strict=True)
-                ],
-                "variance": [
-                    np.full(n, self.reading_variance(e))
-                    for n, e in zip(counts, entries, strict=True)
-                ],
-            },
-        )
-        return PairedRows(
-            rows.value,
-            rows.stage,
-            rows.zone,
-            rows.place,
-            rows.place_zone,
-            rows.zones,
-            rows.places,
-            rows.extra,
-            devices,
-            self.earlier(case),
-        )
-
-    def variables(self, case: Case) -> tuple[Variable, ...]:
-        """Give the line of each device."""
-        key = self.form.key
-        entries = [cast(IndirectEntry, item.entry) for _, item in gather(case, key)]
-        devices = dict.fromkeys(entry.device for entry in entries)
-        return tuple(
-            catalogue_variable(
-                variable_name(key, device, what),
-                f"{self.form.title.lower()} {words}, {device}",
-                symbol,
-                self.unit_of(what),
-                f"{key.replace('_', ' ')}, {what}",
-            )
-            for device in devices
-            for what, (words, symbol) in WORDS.items()
-        )
-
-    def unit_of(self, what: str) -> str:
-        """Give the unit of a variable of the line."""
-        return "-"
-
-    def faults(self, case: Case) -> Sequence[Fault]:
-        """Find devices without a core at any of their places, and lines that fall."""
-        key = self.form.key
-        cored = {
-            name
-            for _, item in gather(case, strength_places.CORES)
-            for name in place_keys(item)
-            if name
-        }
-        paired: dict[str, int] = {}
-        items = gather(case, key)
+        names = tuple(devices(case, self.form.key))
+        value, error, device = [], [], []
         for _, item in items:
-            device = cast(IndirectEntry, item.entry).device
-            paired[device] = paired.get(device, 0) + len(cored.intersection(place_keys(item)))
-        found = []
-        for _, item in items:
-            entry = cast(IndirectEntry, item.entry)
-            if entry.curve is None and paired[entry.device] < FEWEST_PAIRS:
-                found.append(
-                    case.document.fault(
-                        item.keys,
-                        f"no core was taken at a place that {entry.device!r} read",
-                        mend="name places alike in both tables (location or section), or say "
-                        "curve: published",
-                    )
-                )
-        slopes = [v for v in self.variables(case) if not v.name.endswith(".level")]
-        found += restated_faults(case, slopes, only_positive)
-        return found
+            entry = cast(Any, item.entry)
+            value.append(np.log(item.table.numbers[self.form.value]))
+            said = item.table.numbers["readings"]
+            count = np.where(np.isfinite(said), said, entry.readings)
+            error.append(np.log1p(entry.reading_error**2) / count)
+            device.append(np.full(len(item.table), float(names.index(entry.device.name))))
+        rows = build_rows(items, value, {"error": error, "device": device})
+        known = {one.name: getattr(rows, one.name) for one in fields(Rows)}
+        return StrengthRows(**known, devices=names, earlier=self.earlier(case))
 
     def data(self, rows: Rows, stage: int) -> dict[str, NDArray[Any]]:
-        """Means by place, with later surveys switched off."""
-        return strength_places.data(self.form.key, cast(PairedRows, rows), stage)
+        """Statistics of lone readings and readings of shared places, later surveys off."""
+        return strength_places.data(self.form.key, cast(StrengthRows, rows), stage)
 
     def log_likelihood(
         self, rows: Rows, values: Mapping[str, Numeric], data: Mapping[str, Numeric]
     ) -> Numeric:
-        """Log-density of all active readings given the kinds before."""
-        return strength_places.log_likelihood(self.form.key, cast(PairedRows, rows), values, data)
+        """Log-likelihood of all active readings given those of the kinds before."""
+        known = cast(StrengthRows, rows)
+        return strength_places.log_likelihood(self.form.key, known, values, data)
 
     def without(self, rows: Rows, key: str) -> Rows:
         """Leave out readings of another kind that these are given."""
-        paired = cast(PairedRows, rows)
-        if all(name != key for name, _ in paired.earlier):
+        known = cast(StrengthRows, rows)
+        if key not in known.earlier:
             return rows
-        return replace(
-            paired, earlier=tuple((name, some) for name, some in paired.earlier if name != key)
-        )
+        kept = {name: some for name, some in known.earlier.items() if name != key}
+        return replace(known, earlier=kept)
 
     def simulate(
         self, rows: Rows, values: Mapping[str, FloatArray], rng: np.random.Generator
     ) -> FloatArray:
-        """Draw readings at the same places, given the cores that were taken there."""
-        return strength_places.simulate(self.form.key, cast(PairedRows, rows), values, rng)
+        """Draw ln of the same readings given those of the kinds before, (n_draw, n_row)."""
+        return strength_places.simulate(self.form.key, cast(StrengthRows, rows), values, rng)
 
     def local(
         self,
@@ -208,11 +179,22 @@ class IndirectStrength(EvidenceKind):
         zone: str,
         values: Mapping[str, FloatArray],
     ) -> tuple[LocalModel, ...]:
-        """Strength at a section by these readings, its cores and what else was read there."""
-        place = None if rows is None else rows.place_of(section)
-        if rows is None or place is None:
-            return ()
-        if rows.stage[rows.place == place].min() > stage:
-            return ()
-        paired = cast(PairedRows, rows)
-        return (strength_places.local_strength(self.form.key, paired, stage, place, values),)
+        """Strength at a section read by this test, given all kinds before it, too."""
+        known = cast(StrengthRows | None, rows)
+        at = (section, zone)
+        return strength_places.local_strength(self.form.key, known, stage, at, values)
+
+
+def devices(case: Case, key: str) -> dict[str, object]:
+    """Name the devices of a kind in order of first use, each with its curve, None for none."""
+    found: dict[str, object] = {}
+    for _, item in gather(case, key):
+        name, curve = device_and_curve(item)
+        found[name] = found.get(name) or curve
+    return found
+
+
+def device_and_curve(item: Evidence) -> tuple[str, object]:
+    """Give what an entry says of its device and of that one's curve."""
+    entry = cast(Any, item.entry)
+    return entry.device.name, entry.curve

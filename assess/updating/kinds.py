@@ -32,15 +32,15 @@ OWN: tuple[EvidenceKind, ...] = (
     CarbonationDepth(),
     ChlorideProfile(),
     Cores(),
+    Rebound(),  # given cores
+    PulseVelocity(),  # given cores and rebound numbers
     CorrosionCurrent(),
     Cover(),
     CrackWidth(),
     Delamination(),
     Dimensions(),
     HalfCell(),
-    PulseVelocity(),
     Quantities(),
-    Rebound(),
     SectionLoss(),
     YieldStrength(),
 )

@@ -1,70 +1,106 @@
-"""Evidence: ultrasonic pulse velocity."""
+"""Evidence: velocities of ultrasonic pulses through the concrete."""
 
-from typing import Any
+from collections.abc import Sequence
+from typing import Annotated, ClassVar, Literal, cast
 
-from pydantic import Field
+from pydantic import AfterValidator, Field
 
-from assess.case.forms import Column, EvidenceForm
+from assess.case.distributions import Distribution
+from assess.case.forms import Column, EvidenceEntry, EvidenceForm, Table
+from assess.case.processes import only_positive
 from assess.case.quantities import CoefficientOfVariation
 from assess.case.reader import Case
-from assess.updating.cores import Cores
-from assess.updating.indirect_strength import IndirectEntry, IndirectStrength
-from assess.updating.kind import FloatArray, Rows
+from assess.errors import Fault
+from assess.mechanics.indirect_strength import VELOCITY_RANGE
+from assess.updating.indirect_faults import beyond_curve
+from assess.updating.indirect_strength import (
+    EN_13791,
+    IndirectEntry,
+    IndirectStrength,
+    ReadingCount,
+    StatedLine,
+)
+from assess.updating.kind import Rows
+from assess.updating.rebound import Rebound
 
-TYPICAL = 4.2  # [km/s] that a coefficient of variation of reading is taken of
+REBOUND = Rebound()
+
+
+class VelocityDistribution(Distribution):
+    """An uncertain velocity, in km/s."""
+
+    unit: ClassVar[str] = "km/s"
+    positive: ClassVar[bool] = True
+
+
+class VelocityLine(StatedLine):
+    """The line of pulse velocities as the engineer states it."""
+
+    level: Annotated[VelocityDistribution, AfterValidator(only_positive)] = Field(
+        description="Pulse velocity at a strength in the structure of 30 MPa. [km/s]"
+    )
 
 
 class PulseVelocityEntry(IndirectEntry):
     """What a survey says of its pulse velocities."""
 
-    V: CoefficientOfVariation = Field(
-        0.02,
-        description="Coefficient of variation of one velocity about that of its place. ACI 228.1R "
-        "(from memory).",
+    curve: Literal["EN 13791"] | VelocityLine | None = Field(
+        None,
+        description="Line from strength to pulse velocity before any pair is looked at. Left out: "
+        "it is learned from places that have cores, too.",
     )
+    readings: ReadingCount = Field(
+        1.0, description="Single readings behind a row, if it has no column readings."
+    )
+    reading_error: CoefficientOfVariation = Field(
+        0.02,
+        description="Coefficient of variation of single readings at one place. ACI 228.1R: about "
+        "0.02 (from memory).",
+    )
+
+
+def _doubts(entry: EvidenceEntry, table: Table) -> Sequence[Fault]:
+    if cast(PulseVelocityEntry, entry).curve != EN_13791:
+        return ()
+    return beyond_curve(PulseVelocity.form, table, VELOCITY_RANGE, EN_13791)
 
 
 class PulseVelocity(IndirectStrength):
-    """Pulse velocity: linear in ln strength, an exponential curve of strength in velocity."""
+    """Pulse velocities: see `IndirectStrength`; given cores and rebound at the same places."""
 
     form = EvidenceForm(
         key="pulse_velocity",
-        title="Pulse velocity",
+        title="Pulse velocities",
         entry=PulseVelocityEntry,
         columns=(
             Column(
-                "velocity",
-                "velocity of longitudinal pulses",
+                "pulse velocity",
+                "path over transit time, direct transmission or corrected to it",
                 "km/s",
-                above=0.5,
+                above=0.0,
                 below=8.0,
-                usual=(3.0, 5.3),
+                usual=(3.0, 5.5),
+            ),
+            Column(
+                "readings", "single readings behind the row", "-", required=False,
+                above=0.0, below=1000.0,
             ),
         ),
-        value="velocity",
-    )
+        value="pulse velocity",
+        log_scale=True,
+        doubts=_doubts,
+    )  # fmt: skip
     unit = "km/s"
-    log_scale = False
+    symbol = "v"
     assumption = (
-        "Pulse velocity is linear in the logarithm of strength, places depart from the line "
-        "normally; moisture, cracks and bars along the path are taken as avoided or alike at all "
-        "places of a device."
+        "ln of a pulse velocity is a line in ln of the local strength, one for each device, with a "
+        "scatter from place to place that is independent of that of the rebound number; it is "
+        "learned from places with cores, or stated. Aggregate sets its level; wet concrete and "
+        "bars along the path read high, cracks read low: places with cores tell of this only if "
+        "they are alike."
     )
-    column = "velocity"
 
-    def transformed(self, reading: FloatArray) -> FloatArray:
-        """Leave velocities as they are."""
-        return reading
-
-    def reading_variance(self, entry: Any) -> float:
-        """Variance of the mean of a row's readings."""
-        return float((entry.V * TYPICAL) ** 2 / entry.readings)
-
-    def unit_of(self, what: str) -> str:
-        """Give velocities."""
-        return "km/s"
-
-    def earlier(self, case: Case) -> tuple[tuple[str, Rows], ...]:
-        """Gather the cores."""
-        cores = Cores().rows(case)
-        return () if cores is None else (("cores", cores),)
+    def earlier(self, case: Case) -> dict[str, Rows]:
+        """Gather the cores and the rebound numbers."""
+        rebound = REBOUND.rows(case)
+        return REBOUND.earlier(case) | ({} if rebound is None else {REBOUND.form.key: rebound})

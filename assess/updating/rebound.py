@@ -1,73 +1,97 @@
-"""Evidence: rebound numbers."""
+"""Evidence: rebound numbers of the concrete's surface."""
 
-from typing import Any
+from collections.abc import Sequence
+from typing import Literal, cast
 
-import numpy as np
 from pydantic import Field
 
-from assess.case.forms import Column, EvidenceForm
+from assess.case.forms import Column, EvidenceEntry, EvidenceForm, Table
 from assess.case.quantities import CoefficientOfVariation
 from assess.case.reader import Case
-from assess.updating.indirect_strength import IndirectEntry, IndirectStrength
-from assess.updating.kind import FloatArray, Rows
-from assess.updating.pulse_velocity import PulseVelocity
+from assess.errors import Fault
+from assess.mechanics.indirect_strength import REBOUND_RANGE
+from assess.updating.indirect_faults import beyond_curve
+from assess.updating.indirect_strength import (
+    EN_13791,
+    IndirectEntry,
+    IndirectStrength,
+    PositiveNumberDistribution,
+    ReadingCount,
+    StatedLine,
+)
+from assess.updating.kind import Rows
+from assess.updating.strength_places import CORES
+
+
+class ReboundLine(StatedLine):
+    """The line of a rebound hammer as the engineer states it."""
+
+    level: PositiveNumberDistribution = Field(
+        description="Rebound number at a strength in the structure of 30 MPa. [-]"
+    )
 
 
 class ReboundEntry(IndirectEntry):
     """What a survey says of its rebound numbers."""
 
-    readings: float = Field(
-        10.0, ge=1.0, description="Number of readings that each row is the mean or median of."
+    curve: Literal["EN 13791"] | ReboundLine | None = Field(
+        None,
+        description="Line from strength to rebound number before any pair is looked at. Left out: "
+        "it is learned from places that have cores, too.",
     )
-    V: CoefficientOfVariation = Field(
+    readings: ReadingCount = Field(
+        9.0,
+        description="Single readings behind a row, if it has no column readings. EN 12504-2 wants "
+        "at least nine.",
+    )
+    reading_error: CoefficientOfVariation = Field(
         0.10,
-        description="Coefficient of variation of one rebound number about that of its place. ACI "
-        "228.1R (from memory).",
+        description="Coefficient of variation of single readings at one place. ACI 228.1R: about "
+        "0.10 (from memory).",
     )
+
+
+def _doubts(entry: EvidenceEntry, table: Table) -> Sequence[Fault]:
+    if cast(ReboundEntry, entry).curve != EN_13791:
+        return ()
+    return beyond_curve(Rebound.form, table, REBOUND_RANGE, EN_13791)
 
 
 class Rebound(IndirectStrength):
-    """Rebound number: ln linear in ln strength, a power law."""
+    """Rebound numbers: see `IndirectStrength`; given cores at the same places."""
 
     form = EvidenceForm(
         key="rebound",
-        title="Rebound number",
+        title="Rebound numbers",
         entry=ReboundEntry,
         columns=(
             Column(
-                "rebound",
-                "rebound number of a place, corrected for the angle of the hammer",
+                "rebound number",
+                "median of the readings at a place, impact horizontal or corrected to it",
                 "-",
-                above=5.0,
+                above=0.0,
                 below=100.0,
                 usual=(20.0, 60.0),
             ),
+            Column(
+                "readings", "single readings behind the row", "-", required=False,
+                above=0.0, below=1000.0,
+            ),
         ),
-        value="rebound",
+        value="rebound number",
         log_scale=True,
-    )
+        doubts=_doubts,
+    )  # fmt: skip
     unit = "-"
-    log_scale = True
+    symbol = "R"
     assumption = (
-        "The logarithm of the rebound number is linear in that of strength, places depart from the "
-        "line normally; carbonation and moisture of the surface are taken as alike at all places "
-        "of a device."
+        "ln of a rebound number is a line in ln of the local strength, one for each device, with a "
+        "scatter from place to place; it is learned from places with cores, or stated. Carbonated, "
+        "dry or hammered-smooth surfaces read high, wet ones low, and impact that is not "
+        "horizontal reads otherwise: places with cores tell of this only if they are alike."
     )
-    column = "rebound"
 
-    def transformed(self, reading: FloatArray) -> FloatArray:
-        """Take logarithms."""
-        return np.log(reading)
-
-    def reading_variance(self, entry: Any) -> float:
-        """Variance of ln of the mean of a row's readings."""
-        return float(np.log1p(entry.V**2 / entry.readings))
-
-    def earlier(self, case: Case) -> tuple[tuple[str, Rows], ...]:
-        """Gather cores and pulse velocities."""
-        velocity = PulseVelocity()
-        found = velocity.rows(case)
-        return (
-            *velocity.earlier(case),
-            *(() if found is None else ((velocity.form.key, found),)),
-        )
+    def earlier(self, case: Case) -> dict[str, Rows]:
+        """Gather the cores."""
+        cores = CORES.rows(case)
+        return {} if cores is None else {CORES.form.key: cores}

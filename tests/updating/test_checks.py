@@ -1,10 +1,12 @@
 """Predictive checks: drawn bit by bit, the same as all at once."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from assess.updating import checks
-from assess.updating.checks import data_sets
+from assess.updating.checks import data_sets, surprises
 from assess.updating.model import specify
 from assess.updating.sampling import Settings
 from assess.updating.stages import prior_draws
@@ -62,3 +64,22 @@ def test_memory_bounds_how_many_sets_are_held_not_what_they_say(known, monkeypat
     assert sum(shape[0] for shape in shapes) == 150
     for name, value in whole.p_values["prior"].items():
         assert parts.p_values["prior"][name] == pytest.approx(value, abs=0.12)
+
+
+def test_a_surprise_says_which_way_and_how_rare(known):
+    case, spec, stages = known
+    (found,) = data_sets(case, spec, stages[:1], seed=3)
+    told = replace(
+        found,
+        stage=1,
+        p_values={
+            "prior": {"mean": 1.0 - 1 / 130, "scatter": 0.4},
+            "after": {"mean": 0.5, "minimum": 0.0},
+        },
+    )
+    (first, second) = surprises([told], ["prior", "after"])
+    assert first[0] == "Cover readings, deck, after"
+    assert "mean is lower than was to be expected" in first[1]
+    assert "1 in 130 simulated surveys had one as low." in first[1]
+    assert "minimum is higher than the model gives" in second[1]
+    assert "none of 400 simulated surveys had one as high." in second[1]

@@ -1,261 +1,280 @@
-"""Cores, velocities and rebound numbers of the same places, against the joint normal density."""
+"""Cores and indirect tests of the same places: the kinds' densities make up the joint one."""
+
+from dataclasses import replace
 
 import numpy as np
 import pytest
-from scipy import stats
+from scipy import integrate, stats
 
-from assess.reliability.problem import section_state
+from assess.reliability.problem import section_state, without_dependence
 from assess.reliability.teaching import lost_log_likelihood
 from assess.updating.kinds import KINDS
 from assess.updating.model import specify
-from assess.updating.strength_places import REFERENCE, units
-from tests.updating.graphs import graph, numbers
-from tests.verification import cases
+from assess.updating.strength_places import data, find_units, given, lay_out, log_likelihood
+from tests.updating import strength_case as deck
 
-CORES, REBOUND, VELOCITY = KINDS["cores"], KINDS["rebound"], KINDS["pulse_velocity"]
-CORE_TABLE = "location,section,strength [MPa],diameter [mm],length [mm],moisture\n" + (
-    "A,,38,100,200,soaked\nA,,35,100,200,soaked\nB,,31,100,200,soaked\n,S1,40,100,200,soaked\n"
-)
-REBOUND_TABLE = "location,section,rebound\nA,,41\nB,,36\nC,,44\n,S1,42\n,,39\nA,,43\n"
-VELOCITY_TABLE = "location,section,velocity [km/s]\nA,,4.4\nC,,4.6\n,S1,4.5\n"
-LATER = "location,section,rebound\nB,,38\nD,,45\n"
-VALUES = {
-    "deck.concrete_mean": np.array([34.0, 40.0]),
-    "deck.concrete_scatter": np.array([0.12, 0.2]),
-    "rebound.hammer.level": np.array([3.5, 3.6]),
-    "rebound.hammer.slope": np.array([0.4, 0.55]),
-    "rebound.hammer.scatter": np.array([0.04, 0.07]),
-    "pulse_velocity.device.level": np.array([4.2, 4.4]),
-    "pulse_velocity.device.slope": np.array([0.3, 0.45]),
-    "pulse_velocity.device.scatter": np.array([0.06, 0.1]),
-}
+ALL = ("cores", "rebound", "pulse_velocity")
 
 
-@pytest.fixture
-def make(make_case):
-    def build(errors="normal", curve=None, cores=True):
-        first = {
-            "date": "2015-01-01",
-            "pulse_velocity": {"table": "v.csv", "zone": "deck"},
-            "rebound": {"table": "r.csv", "zone": "deck", "device": "hammer"},
-        }
-        if cores:
-            first["cores"] = {
-                "table": "c.csv", "zone": "deck", "correction": "none", "errors": errors,
-            }  # fmt: skip
-        if curve:
-            first["rebound"]["curve"] = first["pulse_velocity"]["curve"] = curve
-        later = {"table": "l.csv", "zone": "deck", "device": "hammer"}
-        case = cases.base(surveys=[first, {"date": "2020-01-01", "rebound": later}])
-        tables = {
-            "c.csv": CORE_TABLE, "r.csv": REBOUND_TABLE, "v.csv": VELOCITY_TABLE, "l.csv": LATER,
-        }  # fmt: skip
-        return make_case(case, tables)
-
-    return build
+@pytest.fixture(scope="module")
+def spec(make_case):
+    return specify(make_case(deck.case(), deck.TABLES))
 
 
-def _joint(case, draw, stage, left_out=None):
-    """Log-density of all readings as one multivariate normal."""
-    at = {name: value[draw] for name, value in VALUES.items()}
-    centre, scatter = np.log(at["deck.concrete_mean"]), at["deck.concrete_scatter"]
-    mean, slope, place, noise, unit, value = [], [], [], [], [], []
-    for kind, line in (
-        (CORES, None),
-        (VELOCITY, "pulse_velocity.device"),
-        (REBOUND, "rebound.hammer"),
-    ):
-        rows = kind.rows(case)
-        if rows is None or kind is left_out:
-            continue
-        for i in np.flatnonzero(rows.stage <= stage):
-            name = rows.places[rows.place[i]] or f"{kind.form.key} {i}"
-            value.append(rows.value[i])
-            place.append(name)
-            if line is None:
-                mean.append(centre)
-                slope.append(1.0)
-                noise.append(1.0 / rows.extra["precision"][i])
-                unit.append(f"core {i}")
-            else:
-                mean.append(at[f"{line}.level"] + at[f"{line}.slope"] * (centre - REFERENCE))
-                slope.append(at[f"{line}.slope"])
-                noise.append(rows.extra["variance"][i])
-                unit.append(f"{line} {name}")
-    count, slope = len(value), np.array(slope)
-    covariance = np.diag(noise)
-    for i in range(count):
-        for j in range(count):
-            if place[i] == place[j]:
-                covariance[i, j] += slope[i] * slope[j] * scatter**2
-            if unit[i] == unit[j] and not unit[i].startswith("core"):
-                line = unit[i].split(" ")[0]
-                covariance[i, j] += at[f"{line}.scatter"] ** 2
-    return stats.multivariate_normal(mean, covariance).logpdf(value)
-
-
-def _ours(case, stage):
-    total = 0.0
-    for kind in (CORES, VELOCITY, REBOUND):
-        rows = kind.rows(case)
-        if rows is not None:
-            total = total + kind.log_likelihood(rows, VALUES, kind.data(rows, stage))
-    return total
+def _total(spec, stage, kinds=ALL, values=deck.VALUES):
+    return sum(
+        KINDS[key].log_likelihood(spec.rows[key], values, KINDS[key].data(spec.rows[key], stage))
+        for key in kinds
+    )
 
 
 @pytest.mark.parametrize("stage", [1, 2])
-@pytest.mark.parametrize("cores", [True, False])
-def test_kinds_together_have_the_joint_density(make, stage, cores):
-    case = make(cores=cores, curve="published")
-    ours = _ours(case, stage)
-    exact = [_joint(case, draw, stage) for draw in (0, 1)]
-    assert ours[1] - ours[0] == pytest.approx(exact[1] - exact[0], rel=1e-9)
+@pytest.mark.parametrize(
+    "kinds", [ALL, ("cores", "rebound"), ("cores", "pulse_velocity"), ("rebound", "pulse_velocity")]
+)
+def test_the_kinds_add_up_to_the_joint_normal_density(make_case, kinds, stage):
+    some = specify(make_case(deck.case(kinds), deck.TABLES))
+    chosen = [r for r in deck.readings() if r.kind in kinds and r.stage <= stage]
+    reference = []
+    for draw in range(3):
+        mean, covariance, value, _ = deck.joint(chosen, deck.at(draw))
+        reference.append(stats.multivariate_normal(mean, covariance).logpdf(value))
+    ours = _total(some, stage, kinds)
+    # Terms of the errors alone are left out, and cancel between draws.
+    np.testing.assert_allclose(ours - ours[0], np.array(reference) - reference[0], rtol=1e-9)
 
 
-def test_normal_errors_are_a_limit_of_student_errors(make):
-    # With as many degrees of freedom as allowed t errors are nearly normal: so are the densities.
-    case = make(errors="Student-t")
-    rows = {kind: kind.rows(case) for kind in (CORES, VELOCITY, REBOUND)}
-    total = []
-    for freedom in (np.inf, 1e7):
-        found = 0.0
-        for kind, some in rows.items():
-            for core in [r for k, r in getattr(some, "earlier", ()) if k == "cores"] + (
-                [some] if kind is CORES else []
-            ):
-                core.extra["freedom"][:] = freedom
-            for _, velocity in [p for p in getattr(some, "earlier", ()) if p[0] != "cores"]:
-                for _, core in velocity.earlier:
-                    core.extra["freedom"][:] = freedom
-            found = found + kind.log_likelihood(some, VALUES, kind.data(some, 2))
-        total.append(found)
-    np.testing.assert_allclose(total[0], total[1], atol=2e-4)
+@pytest.mark.parametrize(
+    ("key", "before"), [("rebound", ("cores",)), ("pulse_velocity", ("cores", "rebound"))]
+)
+def test_a_kind_alone_is_the_density_of_its_readings_given_those_before(spec, key, before):
+    kinds = (*before, key)
+    known = [r for r in deck.readings() if r.kind in before]
+    both = [r for r in deck.readings() if r.kind in kinds]
+    reference = []
+    for draw in range(3):
+        pair = []
+        for chosen in (both, known):
+            mean, covariance, value, _ = deck.joint(chosen, deck.at(draw))
+            pair.append(stats.multivariate_normal(mean, covariance).logpdf(value))
+        reference.append(pair[0] - pair[1])
+    ours = _total(spec, 2, (key,))
+    np.testing.assert_allclose(ours - ours[0], np.array(reference) - reference[0], rtol=1e-9)
 
 
-def test_the_sampler_sees_the_same_density(make):
-    for errors in ("normal", "Student-t"):
-        case = make(errors)
-        prior = specify(case).prior
-        at = 0.5 * np.random.default_rng(7).normal(size=len(prior.names))
-        for kind in (VELOCITY, REBOUND):
-            rows = kind.rows(case)
-            value, gradient = graph(kind, rows, prior, 2)(at)
-            assert value == pytest.approx(numbers(kind, rows, prior, 2, at), abs=1e-8)
-            assert np.all(np.isfinite(gradient))
+@pytest.mark.parametrize("left_out", ["cores", "rebound", "pulse_velocity"])
+def test_leaving_a_kind_out_leaves_the_density_of_the_others(spec, left_out):
+    kinds = ("cores", "rebound", "pulse_velocity")
+    ours = _total(spec, 2, kinds) - lost_log_likelihood(spec, left_out, deck.VALUES, 2)
+    reference = []
+    for draw in range(3):
+        kept = [r for r in deck.readings() if r.kind in kinds and r.kind != left_out]
+        mean, covariance, value, _ = deck.joint(kept, deck.at(draw))
+        reference.append(stats.multivariate_normal(mean, covariance).logpdf(value))
+    np.testing.assert_allclose(ours - ours[0], np.array(reference) - reference[0], rtol=1e-9)
 
 
-def test_later_surveys_say_nothing_before(make):
-    case = make()
-    rows = REBOUND.rows(case)
-    nothing = REBOUND.log_likelihood(rows, VALUES, REBOUND.data(rows, 0))
-    np.testing.assert_allclose(nothing, 0.0, atol=1e-12)
+def test_a_kind_that_tells_no_variable_anything_loses_the_same_for_all_draws(make_case):
+    table = "section,diameter [mm]\nS1,31.8\n"
+    bars = {"table": "bars.csv"}
+    raw = deck.case(("cores",))
+    raw["surveys"][0]["bars_found"] = bars
+    some = specify(make_case(raw, deck.TABLES | {"bars.csv": table}))
+    lost = lost_log_likelihood(some, "bars_found", deck.VALUES, 2)
+    assert lost.shape == (3,)
+    assert np.ptp(lost) == 0.0
 
 
-def test_section_strength_is_conditional_on_all_that_was_read_there(make):
-    case = make()
+def test_readings_alone_at_their_places_enter_in_groups(spec):
+    layout = lay_out(spec.rows["rebound"])
+    # Single rows of 9, 9 (left out), 12 readings, and of the other hammer; Z is alone, too.
+    assert sorted(np.bincount(layout.group).tolist()) == [1, 1, 3]
+    names = {spec.rows["rebound"].places[place] for place in layout.shared}
+    assert names == {"deck: K1", "deck: K2", "deck: K3", "deck: L1", "deck: X", "section S1"}
+
+
+def test_cost_does_not_grow_with_single_readings(make_case):
+    many = "location,rebound number\n" + ",38\n,41\n,44\n" * 2000
+    case = deck.case(("rebound",))
+    found = specify(make_case(case, deck.TABLES | {"rebound.csv": many})).rows["rebound"]
+    sizes = {name: array.size for name, array in KINDS["rebound"].data(found, 2).items()}
+    assert max(sizes.values()) < 10
+
+
+def test_the_order_of_readings_does_not_matter(spec):
+    rng = np.random.default_rng(3)
+    for key in ("rebound", "pulse_velocity"):
+        rows = spec.rows[key]
+        order = rng.permutation(len(rows.value))
+        mixed = replace(
+            rows,
+            value=rows.value[order],
+            stage=rows.stage[order],
+            zone=rows.zone[order],
+            place=rows.place[order],
+            extra={name: array[order] for name, array in rows.extra.items()},
+        )
+        for stage in (1, 2):
+            np.testing.assert_allclose(
+                KINDS[key].log_likelihood(mixed, deck.VALUES, KINDS[key].data(mixed, stage)),
+                KINDS[key].log_likelihood(rows, deck.VALUES, KINDS[key].data(rows, stage)),
+                rtol=1e-10,
+            )
+
+
+def _quadrature(cores, freedom, indirect, draw):
+    """Log of the ratio of densities with and without indirect readings at one place."""
+    values = deck.at(draw)
+    mu, sigma = np.log(values["deck.concrete_mean"]), values["deck.concrete_scatter"]
+
+    def density(u, some):
+        product = stats.norm.pdf(u, mu, sigma)
+        for one in cores:
+            product *= stats.t.pdf((one.value - u) / one.error**0.5, freedom) / one.error**0.5
+        for one in some:
+            name = f"{one.kind}.{one.device}"
+            centre = np.log(values[f"{name}.level"]) + values[f"{name}.slope"] * (u - np.log(30.0))
+            sd = np.sqrt(values[f"{name}.scatter"] ** 2 + one.error)
+            product *= stats.norm.pdf(one.value, centre, sd)
+        return product
+
+    points = sorted({mu, *(one.value for one in cores)})
+    after, before = (
+        integrate.quad(density, mu - 12 * sigma, mu + 12 * sigma, (some,), points=points, limit=400)
+        for some in (indirect, [])
+    )
+    return np.log(after[0] / before[0])
+
+
+def test_cores_with_student_errors_are_conditioned_on_by_quadrature(spec):
+    rows, cores = spec.rows["rebound"], spec.rows["cores"]
+    freedom = np.full(len(cores.value), 3.0)
+    heavy = replace(cores, extra={**cores.extra, "freedom": freedom})
+    ours = log_likelihood(
+        "rebound",
+        given(rows, {"cores": heavy}),
+        deck.VALUES,
+        data("rebound", given(rows, {"cores": heavy}), 1),
+    )
+    first = [r for r in deck.readings() if r.stage == 1]
+    reference = np.zeros(3)
+    for place in {r.place for r in first if r.kind == "rebound"}:
+        here = [r for r in first if r.place == place]
+        mine = [r for r in here if r.kind == "rebound"]
+        # Rows of one unit share its departure: their mean is one reading.
+        weight = np.array([1.0 / r.error for r in mine])
+        mean = weight @ [r.value for r in mine] / weight.sum()
+        unit = mine[0]._replace(value=mean, error=1.0 / weight.sum())
+        known = [r for r in here if r.kind == "cores"]
+        reference += [_quadrature(known, 3.0, [unit], draw) for draw in range(3)]
+    np.testing.assert_allclose(ours - ours[0], reference - reference[0], rtol=1e-5, atol=1e-6)
+
+
+def test_simulation_beside_cores_with_student_errors_follows_their_density(spec):
+    rows, cores = spec.rows["rebound"], spec.rows["cores"]
+    heavy = replace(cores, extra={**cores.extra, "freedom": np.full(len(cores.value), 3.0)})
+    values = {name: np.full(40_000, value[0]) for name, value in deck.VALUES.items()}
+    drawn = KINDS["rebound"].simulate(
+        given(rows, {"cores": heavy}), values, np.random.default_rng(5)
+    )
+    place = rows.places.index("deck: K2")
+    row = int(np.flatnonzero(rows.place == place)[0])
+    known = [r for r in deck.readings() if r.place == "K2" and r.kind == "cores"]
+    one = deck.at(0)
+    grid = np.linspace(2.5, 4.5, 20_001)
+    weight = stats.norm.pdf(grid, np.log(one["deck.concrete_mean"]), one["deck.concrete_scatter"])
+    for core in known:
+        weight = weight * stats.t.pdf((core.value - grid) / core.error**0.5, 3.0)
+    weight /= weight.sum()
+    centre = weight @ grid
+    spread = weight @ (grid - centre) ** 2
+    slope = one["rebound.N.slope"]
+    expected = np.log(one["rebound.N.level"]) + slope * (centre - np.log(30.0))
+    variance = slope**2 * spread + one["rebound.N.scatter"] ** 2 + rows.extra["error"][row]
+    assert drawn[:, row].mean() == pytest.approx(expected, abs=4.5 * (variance / 4e4) ** 0.5)
+    assert drawn[:, row].var() == pytest.approx(variance, rel=0.03)
+
+
+def _conditional(section, stage, draw):
+    """Mean and standard deviation of ln strength at a section, from the joint normal."""
+    here = [r for r in deck.readings() if r.place == section and r.stage <= stage]
+    mean, covariance, value, with_strength = deck.joint(here, deck.at(draw))
+    gain = np.linalg.solve(covariance, with_strength)
+    mu, sigma = deck.at(draw)["deck.concrete_mean"], deck.at(draw)["deck.concrete_scatter"]
+    return np.log(mu) + gain @ (value - mean), np.sqrt(sigma**2 - gain @ with_strength)
+
+
+@pytest.mark.parametrize(("section", "last"), [("S1", "cores"), ("S2", "cores")])
+def test_a_sections_strength_is_the_conditional_normal_of_all_its_tests(make_case, section, last):
+    case = make_case(deck.case(), deck.TABLES)
     spec = specify(case)
-    values = {
-        **{n: np.zeros(2) for n in spec.prior.names},
-        **VALUES,
-        "steel.main": np.full(2, 460.0),
-    }
-    values |= {"deck.cover_mean": np.full(2, 40.0), "deck.cover_scatter": np.full(2, 8.0)}
-    state = section_state(case, spec, case.spec.sections()["S1"], 2, values)
-    (model,) = [m for m in state.locals if "strength" in m.names]
-    assert {"cores", "rebound", "pulse_velocity"} <= state.measured
-    for draw in (0, 1):
-        at = {name: value[draw] for name, value in VALUES.items()}
-        centre, variance = np.log(at["deck.concrete_mean"]), at["deck.concrete_scatter"] ** 2
-        core = CORES.rows(case)
-        readings = [(1.0, np.log(40.0), 1.0 / core.extra["precision"][0])]
-        for line, y, error in (
-            ("rebound.hammer", np.log(42.0), np.log1p(0.1**2 / 10.0)),
-            ("pulse_velocity.device", 4.5, (0.02 * 4.2) ** 2),
-        ):
-            b, s = at[f"{line}.slope"], at[f"{line}.scatter"]
-            readings.append((b, y - at[f"{line}.level"] + b * REFERENCE, s**2 + error))
-        precision = 1.0 / variance + sum(b * b / v for b, _, v in readings)
-        mean = (centre / variance + sum(b * y / v for b, y, v in readings)) / precision
-        for z in (-1.0, 2.0):
-            found = model.values(np.full((1, 1, 1), z), np.array([draw]))["strength"].item()
-            assert np.log(found) == pytest.approx(mean + z / np.sqrt(precision))
+    steel = {"steel.main": np.full(3, 460.0)}
+    cover = {"deck.cover_mean": np.full(3, 40.0), "deck.cover_scatter": np.full(3, 8.0)}
+    entry = case.spec.sections()[section]
+    state = section_state(case, spec, entry, 1, deck.VALUES | steel | cover)
+    strength = [
+        (model, key)
+        for model, key in zip(state.locals, state.kinds, strict=True)
+        if "strength" in model.names
+    ]
+    assert [key for _, key in strength] == [last]
+    model = strength[0][0]
+    for draw in range(3):
+        mean, sd = _conditional(section, 1, draw)
+        assert model.mean[draw] == pytest.approx(mean, rel=1e-10)
+        assert model.sd[draw] == pytest.approx(sd, rel=1e-10)
+    apart = without_dependence(state, 1)
+    names = [name for one in apart.locals for name in one.names]
+    assert names.count("strength") == 1
 
 
-def test_a_calibration_line_agrees_with_least_squares(make_case):
-    # Many pairs whose strengths are known exactly: the likelihood in level and slope is that of
-    # least squares with the scatter known (Gelman et al., BDA3, section 14.2).
-    rng = np.random.default_rng(11)
-    strength = rng.uniform(20.0, 60.0, 30)
-    reading = np.exp(3.5 + 0.42 * (np.log(strength) - REFERENCE) + 0.05 * rng.normal(size=30))
-    tables = {
-        "c.csv": "location,strength [MPa],diameter [mm],length [mm],moisture\n"
-        + "".join(f"P{i},{f},100,200,soaked\n" for i, f in enumerate(strength)),
-        "r.csv": "location,rebound\n" + "".join(f"P{i},{r}\n" for i, r in enumerate(reading)),
-    }
-    survey = {
-        "date": "2015-01-01",
-        "cores": {
-            "table": "c.csv", "zone": "deck", "correction": "none", "within_location": 1e-4,
-        },
-        "rebound": {"table": "r.csv", "zone": "deck", "V": 1e-4},
-    }  # fmt: skip
-    case = make_case(cases.base(surveys=[survey]), tables)
-    rows = REBOUND.rows(case)
-    x, y = np.log(strength) - REFERENCE, np.log(reading)
-    grid = np.linspace(-0.05, 0.05, 21)
-    level, slope = (part.ravel() for part in np.meshgrid(3.5 + grid, 0.42 + 2 * grid))
-    count = len(level)
-    values = {
-        "deck.concrete_mean": np.full(count, 38.0),
-        "deck.concrete_scatter": np.full(count, 0.3),
-        "rebound.device.level": level,
-        "rebound.device.slope": slope,
-        "rebound.device.scatter": np.full(count, 0.05),
-    }
-    found = REBOUND.log_likelihood(rows, values, REBOUND.data(rows, 1))
-    misfit = ((y - level[:, None] - slope[:, None] * x) ** 2).sum(axis=1)
-    exact = -0.5 * misfit / 0.05**2
-    np.testing.assert_allclose(found - found.max(), exact - exact.max(), rtol=1e-3, atol=1e-3)
-
-
-def test_repeated_readings_of_a_place_share_its_departure(make):
-    rows = REBOUND.rows(make())
-    found = units(rows)
-    assert len(found.place) == 6  # A twice, B twice, C, S1, D and one on its own
-    assert found.of_row[0] == found.of_row[5]
-
-
-def test_simulated_readings_have_the_moments_of_the_model(make):
-    case = make()
-    rows = REBOUND.rows(case)
-    draws = 100_000
-    values = {name: np.full(draws, value[0]) for name, value in VALUES.items()}
-    found = REBOUND.simulate(rows, values, np.random.default_rng(3))
-    alone = rows.places.index("deck: D")
-    row = int(np.flatnonzero(rows.place == alone)[0])
-    at = {name: value[0] for name, value in VALUES.items()}
-    b = at["rebound.hammer.slope"]
-    mean = at["rebound.hammer.level"] + b * (np.log(34.0) - REFERENCE)
-    variance = (b * 0.12) ** 2 + 0.04**2 + rows.extra["variance"][row]
-    assert found[:, row].mean() == pytest.approx(mean, abs=1e-3)
-    assert found[:, row].var() == pytest.approx(variance, rel=0.02)
-    assert np.cov(found[:, 0], found[:, 5])[0, 1] > 0.04**2  # both at A
-
-
-def test_readings_without_a_core_need_the_published_curve(make):
-    faults = [*REBOUND.faults(make(cores=False)), *VELOCITY.faults(make(cores=False))]
-    assert len(faults) == 3
-    assert all(fault.line > 1 for fault in faults)
-    assert "no core was taken" in str(faults[0])
-    assert "curve: published" in str(faults[0])
-    assert list(REBOUND.faults(make())) == []
-
-
-@pytest.mark.parametrize("left_out", [CORES, VELOCITY, REBOUND])
-def test_leaving_a_kind_out_leaves_the_density_of_the_others(make, left_out):
-    case = make()
+def test_a_section_not_tested_yet_is_that_of_its_cores_or_its_zone(make_case):
+    case = make_case(deck.case(), deck.TABLES)
     spec = specify(case)
-    lost = lost_log_likelihood(spec, left_out.form.key, VALUES, 2)
-    kept = _ours(case, 2) - lost
-    exact = [_joint(case, draw, 2, left_out) for draw in (0, 1)]
-    assert kept[1] - kept[0] == pytest.approx(exact[1] - exact[0], rel=1e-9)
+    for key in ("rebound", "pulse_velocity"):
+        assert KINDS[key].local(spec.rows[key], 0, "S1", "deck", deck.VALUES) == ()
+        assert KINDS[key].local(None, 0, "S1", "deck", deck.VALUES) == ()
+    assert KINDS["rebound"].local(spec.rows["rebound"], 2, "S2", "deck", deck.VALUES) == ()
+
+
+def test_other_readings_of_earlier_kinds_can_be_put_in(spec):
+    rows, cores = spec.rows["rebound"], spec.rows["cores"]
+    weaker = replace(cores, value=cores.value - 0.3)
+    changed = given(rows, {"cores": weaker})
+    before, after = (
+        KINDS["rebound"].log_likelihood(one, deck.VALUES, KINDS["rebound"].data(one, 2))
+        for one in (rows, changed)
+    )
+    assert np.all(np.abs(after - before) > 0.1)
+    assert given(cores, {"cores": weaker}) is cores
+
+
+def test_readings_of_one_device_at_one_place_make_one_unit(spec):
+    units = find_units(spec.rows["rebound"])
+    place = spec.rows["rebound"].places.index("deck: X")
+    assert np.sum(units.place == place) == 2  # hammers N and M
+    assert len(units.of_row) == 15
+
+
+def test_the_errors_of_core_corrections_are_the_cores_own(make_case):
+    raw = deck.case(("cores", "rebound"))
+    for survey in raw["surveys"]:
+        survey["cores"]["correction"] = "ACI 214.4R"
+    tables = deck.TABLES | {
+        "cores.csv": deck.CORES.replace(",100,200,as received", ",75,90,air dried")
+    }
+    some = specify(make_case(raw, tables))
+    rows, cores = some.rows["rebound"], some.rows["cores"]
+    errors = {"length": 1.3, "diameter": -0.7, "moisture": 0.9, "damage": 2.0, "bar": -0.4}
+    values = deck.VALUES | {
+        f"cores.{name}_correction": np.full(3, error) for name, error in errors.items()
+    }
+    shift = cores.extra["loading"] @ np.array(list(errors.values()))
+    assert np.ptp(shift) > 0.0
+    plain = given(rows, {"cores": replace(cores, value=cores.value - shift)})
+    kind = KINDS["rebound"]
+    np.testing.assert_allclose(
+        kind.log_likelihood(rows, values, kind.data(rows, 2)),
+        kind.log_likelihood(plain, deck.VALUES, kind.data(plain, 2)),
+        rtol=1e-10,
+    )

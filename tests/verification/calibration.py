@@ -12,23 +12,27 @@ References
    choice of test quantities shapes sensitivity, Bayesian Anal. (2023).
 """
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy import stats
 
+from assess.updating.kind import Rows
 from assess.updating.kinds import KINDS
 from assess.updating.model import build_model, specify
 from assess.updating.sampling import NutpieSampler, Settings
+from assess.updating.strength_places import given
 from tests.verification.cases import base, read
 from tests.verification.check import Check
 from tests.verification.design import Design, Spoil, Values, title
 
 FloatArray = NDArray[np.float64]
+Data = Callable[[int], dict[str, NDArray[Any]]]  # of the model, by the number of the data set
 
 SETS = 240  # simulated data sets
 RANKS = 99  # thinned draws of each posterior, so that ranks go from 0 to 99
@@ -49,34 +53,57 @@ class Calibration:
         case["zones"]["deck"] |= design.zone
         case |= design.case
         spec = specify(read(folder, case, design.tables))
-        # Readings may be given those of other kinds, whose own likelihood stays out: variables
-        # are drawn from the prior, not from what those others say.
-        self.spec = replace(spec, rows={design.kind: spec.rows[design.kind]})
+        self.spec = replace(
+            spec, rows={key: spec.rows[key] for key in (*design.before, design.kind)}
+        )
         self.stages = len(design.surveys)
         self.sampler = NutpieSampler(self.spec, build_model(self.spec, self.stages))
 
     def ranks(self, sets: int, seed: int, spoil: Spoil | None = None) -> FloatArray:
         """Ranks of the true values, (set, variable of the design); ``spoil`` alters simulation."""
-        kind, rows = KINDS[self.design.kind], self.spec.rows[self.design.kind]
         rng = np.random.default_rng(seed)
         prior = self.spec.prior
         truth = prior.physical(rng.standard_normal((sets, len(prior.names))))
         values: Values = {name: truth[:, i] for i, name in enumerate(prior.names)}
-        simulated_rows = rows
-        if spoil is not None:
-            simulated_rows, values = spoil(rows, values)
-        measured = kind.simulate(simulated_rows, values, rng)
+        simulated = self._together if self.design.before else self._at_once
+        data = simulated(values, rng, spoil)
         columns = [prior.names.index(name) for name in self.design.variables]
 
         def one(i: int) -> FloatArray:
-            data = kind.data(kind.observed(rows, measured[i]), self.stages)
             settings = Settings(1, RANKS * THIN, TUNE, 0.9, int(seed + i))
-            chains = self.sampler.sample_data(data, settings, lambda _: None)
+            chains = self.sampler.sample_data(data(i), settings, lambda _: None)
             draws = prior.physical(chains.whitened)[0, THIN - 1 :: THIN]
             return np.asarray((draws < truth[i]).sum(axis=0)[columns], dtype=np.float64)
 
         with ThreadPoolExecutor(2) as pool:
             return np.stack(list(pool.map(one, range(sets))))
+
+    def _at_once(self, values: Values, rng: np.random.Generator, spoil: Spoil | None) -> Data:
+        """Simulate all data sets of the kind; give the model's data of each."""
+        kind, rows = KINDS[self.design.kind], self.spec.rows[self.design.kind]
+        simulated_rows = rows
+        if spoil is not None:
+            simulated_rows, values = spoil(rows, values)
+        measured = kind.simulate(simulated_rows, values, rng)
+        return lambda i: kind.data(kind.observed(rows, measured[i]), self.stages)
+
+    def _together(self, values: Values, rng: np.random.Generator, spoil: Spoil | None) -> Data:
+        """Simulate one data set after the other, each kind given those before it."""
+        found = []
+        for i in range(len(next(iter(values.values())))):
+            one = {name: draws[i : i + 1] for name, draws in values.items()}
+            known: dict[str, Rows] = {}
+            data: dict[str, NDArray[Any]] = {}
+            for key in (*self.design.before, self.design.kind):
+                rows = given(self.spec.rows[key], known)
+                source, drawn = rows, one
+                if spoil is not None and key == self.design.kind:
+                    source, drawn = spoil(rows, one)
+                measured = KINDS[key].simulate(source, drawn, rng)[0]
+                known[key] = KINDS[key].observed(rows, measured)
+                data |= KINDS[key].data(known[key], self.stages)
+            found.append(data)
+        return found.__getitem__
 
 
 def smallest_p(ranks: FloatArray, seed: int = 5) -> tuple[float, int]:

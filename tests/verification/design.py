@@ -29,6 +29,7 @@ class Design:
     slow: bool = False  # run only where its group is asked for by name
     zone: Mapping[str, Any] = field(default_factory=dict)  # more keys of the zone ``deck``
     case: Mapping[str, Any] = field(default_factory=dict)  # more keys of the case
+    before: tuple[str, ...] = ()  # kinds whose readings this one is conditional on, in order
 
 
 def title(design: Design) -> str:

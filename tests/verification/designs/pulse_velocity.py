@@ -1,39 +1,49 @@
-"""Pulse velocities given cores at some of their places, some with Student-t errors."""
-
-from dataclasses import replace
+"""Pulse velocities at places with cores, with rebound numbers, with both, and alone."""
 
 from assess.updating.kind import Rows
-from tests.verification.design import Design, Values, survey
+from tests.verification.design import Design, Values
 
-CORES = "location,strength [MPa],diameter [mm],length [mm],moisture\n" + "".join(
-    f"P{i},{28 + 3 * i},100,200,soaked\n" for i in range(5)
+_CORES = "location,strength [MPa],diameter [mm],length [mm],moisture\n" + "\n".join(
+    f"K{i},36,100,200,as received" for i in (1, 1, 2, 3, 4)
 )
-_VELOCITY = "location,velocity [km/s]\n" + "".join(f"P{i},4.3\n" for i in range(10)) + ",4.4\n"
-_LATER = "location,velocity [km/s]\n" + "".join(f"P{i},4.3\n" for i in range(7, 13))
+_REBOUND = "location,rebound number\n" + "\n".join(
+    [f"{place},38" for place in ("K1", "K2", "X1", "X2", "X3", "X3")] + [",38"] * 3
+)
+_FIRST = "location,pulse velocity [km/s]\n" + "\n".join(
+    [f"{place},4.4" for place in ("K1", "K3", "K4", "X1", "X2", "Y")] + [",4.4"] * 5
+)
+_LATER = "location,pulse velocity [m/s],readings\n" + "\n".join(
+    ["K1,4400,3", "K2,4400,3", "X3,4400,3", "Y,4400,1"] + [",4400,3"] * 4
+)
 
 
-def _other_slope(rows: Rows, values: Values) -> tuple[Rows, Values]:
-    return replace(rows, extra={**rows.extra, "variance": 60.0 * rows.extra["variance"]}), values
+def _wider(rows: Rows, values: Values) -> tuple[Rows, Values]:
+    return rows, {k: 3.0 * v if k.endswith("P.scatter") else v for k, v in values.items()}
 
 
+_DEVICE = {"zone": "deck", "device": {"name": "P"}}
 DESIGN = Design(
     "pulse_velocity",
     (
         {
             "date": "2010-01-01",
-            "cores": {"table": "c.csv", "zone": "deck", "correction": "none"},
-            "pulse_velocity": {"table": "v.csv", "zone": "deck"},
+            "cores": {"table": "a.csv", "zone": "deck", "correction": "none"},
+            "pulse_velocity": {"table": "v.csv", **_DEVICE},
         },
-        survey("2020-01-01", "pulse_velocity", {"table": "w.csv", "zone": "deck"}),
+        {
+            "date": "2020-01-01",
+            "rebound": {"table": "r.csv", "zone": "deck", "device": {"name": "N"}},
+            "pulse_velocity": {"table": "w.csv", **_DEVICE},
+        },
     ),
-    {"c.csv": CORES, "v.csv": _VELOCITY, "w.csv": _LATER},
+    {"a.csv": _CORES, "r.csv": _REBOUND, "v.csv": _FIRST, "w.csv": _LATER},
     (
         "deck.concrete_mean",
         "deck.concrete_scatter",
-        "pulse_velocity.device.level",
-        "pulse_velocity.device.slope",
-        "pulse_velocity.device.scatter",
+        *(f"pulse_velocity.P.{what}" for what in ("level", "slope", "scatter")),
+        *(f"rebound.N.{what}" for what in ("level", "slope", "scatter")),
     ),
-    _other_slope,
-    "errors of reading eight times as large as the model has them",
+    _wider,
+    "places three times as far from the line as the model has them",
+    before=("cores", "rebound"),
 )

@@ -1,44 +1,51 @@
-"""Rebound numbers of two hammers, given cores and velocities at some of their places."""
-
-from dataclasses import replace
+"""Rebound numbers of two hammers: at cored places, beside each other, alone, in two surveys."""
 
 from assess.updating.kind import Rows
-from tests.verification.design import Design, Values, survey
-from tests.verification.designs.pulse_velocity import CORES
+from tests.verification.design import Design, Values
 
-_VELOCITY = "location,velocity [km/s]\n" + "".join(f"P{i},4.3\n" for i in range(3, 8))
-_REBOUND = "location,rebound\n" + "".join(f"P{i},40\n" for i in range(10)) + ",44\n"
-_LATER = "location,rebound\n" + "".join(f"P{i},38\n" for i in range(7, 13))
+_CORES = "location,strength [MPa],diameter [mm],length [mm],moisture\n" + "\n".join(
+    f"K{i},36,100,200,as received" for i in (1, 1, 2, 3, 4, 5, 6)
+)
+_FIRST = "location,rebound number,readings\n" + "\n".join(
+    [f"K{i},38,9" for i in (1, 2, 2, 3, 4, 5)] + ["X,38,9", "X,38,9"] + [",38,9"] * 6
+)
+_LATER = "location,rebound number\n" + "\n".join(["K1,40", "K6,40", "X,40"] + [",40"] * 5)
+_LATER_CORES = "location,strength [MPa],diameter [mm],length [mm],moisture\n" + "\n".join(
+    f"K{i},36,100,200,as received" for i in (2, 7)
+)
 
 
-def _larger_errors(rows: Rows, values: Values) -> tuple[Rows, Values]:
-    return replace(rows, extra={**rows.extra, "variance": 60.0 * rows.extra["variance"]}), values
+def _wider(rows: Rows, values: Values) -> tuple[Rows, Values]:
+    return rows, {k: 3.0 * v if k.endswith("N.scatter") else v for k, v in values.items()}
 
 
+_ENTRY = {"zone": "deck", "correction": "none"}
 DESIGN = Design(
     "rebound",
     (
         {
             "date": "2010-01-01",
-            "cores": {"table": "c.csv", "zone": "deck", "correction": "none"},
-            "pulse_velocity": {"table": "v.csv", "zone": "deck"},
-            "rebound": {"table": "r.csv", "zone": "deck", "device": "old"},
+            "cores": {"table": "a.csv", **_ENTRY},
+            "rebound": {"table": "r.csv", "zone": "deck", "device": {"name": "N"}},
         },
-        survey(
-            "2020-01-01",
-            "rebound",
-            {"table": "s.csv", "zone": "deck", "device": "new", "curve": "published"},
-        ),
+        {
+            "date": "2020-01-01",
+            "cores": {"table": "b.csv", **_ENTRY},
+            "rebound": {
+                "table": "s.csv",
+                "zone": "deck",
+                "device": {"name": "M"},
+                "curve": "EN 13791",
+            },
+        },
     ),
-    {"c.csv": CORES, "v.csv": _VELOCITY, "r.csv": _REBOUND, "s.csv": _LATER},
+    {"a.csv": _CORES, "b.csv": _LATER_CORES, "r.csv": _FIRST, "s.csv": _LATER},
     (
         "deck.concrete_mean",
         "deck.concrete_scatter",
-        "rebound.old.level",
-        "rebound.old.slope",
-        "rebound.new.level",
-        "rebound.new.scatter",
+        *(f"rebound.{name}.{what}" for name in "NM" for what in ("level", "slope", "scatter")),
     ),
-    _larger_errors,
-    "errors of reading eight times as large as the model has them",
+    _wider,
+    "places three times as far from the line as the model has them",
+    before=("cores",),
 )
