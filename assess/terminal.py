@@ -19,7 +19,7 @@ from assess.report import numbers
 SHORT = {
     Standing.MEETS: "meets target through {last}",
     Standing.MEETS_UNTIL: "meets target until {year}",
-    Standing.BELOW_LIMITABLE: "below; load x {factor:.2f} would meet it",
+    Standing.BELOW_LIMITABLE: "below; meets it at load x {factor:.2f}",
     Standing.BELOW: "below target now",
 }
 
@@ -28,10 +28,10 @@ class RunScreen:
     """Shows a run; safe to be told things from several threads."""
 
     def __init__(self) -> None:
-        self._console = Console(file=sys.stdout, highlight=False)
+        self._console = Console(file=sys.stdout, highlight=False, markup=False)
         self._progress = Progress(
             SpinnerColumn(),
-            TextColumn("{task.description:<42}"),
+            TextColumn("{task.description:<42}", markup=False),
             BarColumn(bar_width=30),
             TimeElapsedColumn(),
             console=self._console,
@@ -76,12 +76,13 @@ class RunScreen:
         table = Table(title=f"{record.title}: sections, nothing done", title_justify="left")
         surveyed = first != last
         indices = ("before", "after") if surveyed else ("index",)
-        for header in ("section", *indices, "5-95 %", f"in {_last_year(kept)}", "verdict"):
+        headers = ("section", *indices, "5-95 %", "target", f"in {_last_year(kept)}", "verdict")
+        for header in headers:
             side: JustifyMethod = "left" if header in {"section", "verdict"} else "right"
             table.add_column(header, justify=side)
         for item in kept:
             before = record.result(item.section, first) if surveyed else None
-            table.add_row(*_row(item, before))
+            table.add_row(*_row(item, before, wanted.index))
         console.print(table)
         end = f" to {record.assessed + wanted.period - 1}" if wanted.period > 1 else ""
         console.print(
@@ -110,7 +111,7 @@ def _last_year(results: Sequence[SectionResult]) -> int:
     return int(results[0].reference.year[-1])
 
 
-def _row(item: SectionResult, before: SectionResult | None) -> list[str]:
+def _row(item: SectionResult, before: SectionResult | None, target: float) -> list[str]:
     curve = item.reference
     verdict = item.verdict
     words = SHORT[verdict.standing].format(
@@ -126,6 +127,7 @@ def _row(item: SectionResult, before: SectionResult | None) -> list[str]:
             numbers.NO_BREAK, " "
         ),
         f"{curve.low[0]:.2f} to {curve.high[0]:.2f}",
+        f"{target:.2f}",
         f"{curve.index[-1]:.2f}",
         words,
     ]

@@ -33,6 +33,8 @@ CUSTOMARY: dict[str, tuple[str, ...]] = {
 
 _NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?"
 _QUANTITY = re.compile(rf"\s*({_NUMBER})\s*(.*?)\s*")
+# Nobody thinks in the unit inside, and a bare number would be a million times too small.
+NEVER_BARE = frozenset({"N*mm"})
 _DECIMAL_COMMA = re.compile(r"\s*([+-]?\d+),(\d+)(\s*[^\d,.].*)?")
 _HEADER = re.compile(r"\s*(.*?)\s*[\[(]([^\[\]()]*(?:\([^\[\]()]*\)[^\[\]()]*)*)[\])]\s*")
 _UNIT_TEXT = re.compile(r"[A-Za-zµΩ°%‰*/^().\s0-9-]*")
@@ -163,9 +165,13 @@ def convert(value: object, unit: str) -> float:
     like = "a number" if unit == NONE else f"a number with a unit such as {customary(unit)}"
     if isinstance(value, bool) or not isinstance(value, int | float | str):
         raise QuantityError("not a quantity", repr(value)[:_LONGEST], like)
+    parts = None
     if isinstance(value, str):
         if comma := _DECIMAL_COMMA.fullmatch(value):
-            mend = f"with a decimal point? write {comma[1]}.{comma[2]}{comma[3] or ''}"
+            rest = comma[3] or ""
+            mend = f"with a decimal point? write {comma[1]}.{comma[2]}{rest}"
+            if len(comma[2]) == 3:  # thousands, more likely than three decimals
+                mend = f"thousands? write {comma[1]}{comma[2]}{rest}; {mend}"
             raise QuantityError("a number with a comma", repr(value[:_LONGEST]), like, mend)
         parts = _QUANTITY.fullmatch(value)
         if parts is None:
@@ -178,6 +184,9 @@ def convert(value: object, unit: str) -> float:
         number = float(value) if abs(value) < 1e300 else math.inf
     if not math.isfinite(number):
         raise QuantityError("not a finite number", str(value)[:_LONGEST], like)
+    bare = not isinstance(value, str) or not (parts and parts[2])
+    if unit in NEVER_BARE and bare and number != 0.0:
+        raise QuantityError("a number without a unit", str(value)[:_LONGEST], like)
     return number
 
 

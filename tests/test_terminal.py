@@ -114,11 +114,19 @@ def test_every_section_has_a_row(record: RunRecord, shown: Shown) -> None:
     text = shown(record)
     # error: hypot(0.03, 0.04)
     assert cells(text, "A") == [
-        *("A", "3.93", "4.44 ± 0.05", "4.14 to 4.84", "4.11", "meets target through 2055"),
+        *("A", "3.93", "4.44 ± 0.05", "4.14 to 4.84", "3.70", "4.11", "meets target through 2055"),
     ]
     assert cells(text, "B")[-1] == "meets target until 2040"  # 2041 is the first year below
-    assert cells(text, "C")[-1] == "below; load x 0.83 would meet it"
+    assert cells(text, "C")[-1] == "below; meets it at load x 0.83"
     assert cells(text, "D")[-1] == "below target now"
+
+
+def test_names_are_shown_as_they_are(record: RunRecord, shown: Shown) -> None:
+    results = [replace(item, section=f"{item.section} [east] [/2]") for item in record.results]
+    assert cells(shown(replace(record, results=results)), "A [east] [/2]")[0] == "A [east] [/2]"
+    screen = RunScreen()
+    with screen:
+        screen.observe("sampling survey [/2]", 0.5)
 
 
 def test_an_error_is_never_shown_as_zero(record: RunRecord, shown: Shown) -> None:

@@ -143,7 +143,11 @@ def kind_weights(
     values = {name: series[chosen] for name, series in draws.values().items()}
     found: dict[str, FloatArray | None] = {}
     for key in spec.rows:
-        smoothed, shape = array_stats.psislw(-lost_log_likelihood(spec, key, values, draws.number))
+        lost = lost_log_likelihood(spec, key, values, draws.number)
+        if np.ptp(lost) == 0.0:
+            found[key] = np.ones(len(chosen))
+            continue
+        smoothed, shape = array_stats.psislw(lost)  # takes what is lost, gives weights without it
         found[key] = np.exp(smoothed - smoothed.max()) if float(shape) <= WORST_SHAPE else None
     return chosen, found
 
@@ -224,7 +228,8 @@ def section_teaching(
     kinds = [
         Taught(KINDS[key].form.title, None, None)
         if weight is None
-        else taught(KINDS[key].form.title, last[chosen], last, weight)
+        # Both sides on the same draws and local values: only the weights differ.
+        else taught(KINDS[key].form.title, last[chosen], last[chosen], weight)
         for key, weight in weights.items()
     ]
     return Teaching(section, tuple(surveys), tuple(kinds))

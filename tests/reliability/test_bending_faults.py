@@ -77,9 +77,9 @@ def test_a_load_without_a_distribution(maximum: dict[str, object], key: str, wor
 
 
 def test_permanent_loads_need_the_quantities_that_they_grow_with() -> None:
-    stated = {"name": "self weight", "effect": 1e6, "V": 0.05, "proportional_to": ["density"]}
+    stated = {"name": "self weight", "effect": "1 kN*m", "V": 0.05, "proportional_to": ["density"]}
     found = Loads.model_validate(
-        {"permanent": [stated], "variable": {"annual_maximum": {"mean": 1e6, "V": 0.1}}}
+        {"permanent": [stated], "variable": {"annual_maximum": {"mean": "1 kN*m", "V": 0.1}}}
     )
     assert list(unknown_quantities(found, SimpleNamespace(quantities={"density": None}))) == []
     (complaint,) = unknown_quantities(found, SimpleNamespace(quantities={"densities": None}))

@@ -31,7 +31,7 @@ def test_permanent_effects_grow_with_what_they_are_proportional_to():
         {
             "permanent": [
                 {"name": "self weight", "effect": "560 kN*m", "V": 0.05, "proportional_to": ["c"]},
-                {"name": "fill", "effect": 200e6, "V": 0.1, "proportional_to": ["c", "t"]},
+                {"name": "fill", "effect": "200 kN*m", "V": 0.1, "proportional_to": ["c", "t"]},
                 {"name": "parapets", "effect": "30 kN*m", "V": 0.02},
             ],
             "variable": {"annual_maximum": {"mean": "440 kN*m", "V": 0.1}},
@@ -46,7 +46,7 @@ def test_permanent_effects_grow_with_what_they_are_proportional_to():
 
 
 def test_no_permanent_load_is_nothing():
-    loads = Loads.model_validate({"variable": {"annual_maximum": {"mean": 1e6, "V": 0.1}}})
+    loads = Loads.model_validate({"variable": {"annual_maximum": {"mean": "1 kN*m", "V": 0.1}}})
     assert permanent_effect(loads) == (0.0, 0.0)
 
 

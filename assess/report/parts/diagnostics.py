@@ -101,7 +101,7 @@ def _check_row(
     readings = {name: words.p_value_words(value) for name, value in found.items()}
     remarks = [f"{name}: {words_}" for name, words_ in readings.items() if words_ != words.FINE]
     return [
-        text_cell(f"{item.title}, {item.date or item.survey}"),
+        text_cell(", ".join(filter(None, (item.title, item.zone, item.date or item.survey)))),
         text_cell(words.stage_key(record, stage)),
         *(Cell(found.get(name), Form.SHARE) for name in statistics),
         text_cell("; ".join(remarks) or words.FINE, bold=words.CONFLICT in readings.values()),
