@@ -19,7 +19,7 @@ from assess.report import numbers
 SHORT = {
     Standing.MEETS: "meets target through {last}",
     Standing.MEETS_UNTIL: "meets target until {year}",
-    Standing.BELOW_LIMITABLE: "below; meets it at load x {factor:.2f}",
+    Standing.BELOW_LIMITABLE: "below; load x {factor:.2f} meets it",
     Standing.BELOW: "below target now",
 }
 

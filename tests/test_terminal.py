@@ -117,7 +117,7 @@ def test_every_section_has_a_row(record: RunRecord, shown: Shown) -> None:
         *("A", "3.93", "4.44 ± 0.05", "4.14 to 4.84", "3.70", "4.11", "meets target through 2055"),
     ]
     assert cells(text, "B")[-1] == "meets target until 2040"  # 2041 is the first year below
-    assert cells(text, "C")[-1] == "below; meets it at load x 0.83"
+    assert cells(text, "C")[-1] == "below; load x 0.83 meets it"
     assert cells(text, "D")[-1] == "below target now"
 
 
