@@ -46,8 +46,22 @@ def within_one[D: Distribution](value: D) -> D:
     return value
 
 
+MOST_SCATTER = 3.0  # standard deviation of a logarithm: places differ by a factor of 20 and more
+
+
+def log_scatter[D: Distribution](value: D) -> D:
+    """Refuse what cannot be the standard deviation of a logarithm, such as one in percent."""
+    mean = only_positive(value).marginal().mean
+    if mean > MOST_SCATTER:
+        what = "a standard deviation of a logarithm is out of all proportion"
+        mend = f"in percent? {mean:.3g} % is {mean / 100.0:.3g}"
+        raise QuantityError(what, f"mean {mean:.3g}", f"mean up to {MOST_SCATTER:g}", mend)
+    return value
+
+
 _Years = Annotated[YearsDistribution, AfterValidator(only_positive)]
 _Number = Annotated[NumberDistribution, AfterValidator(only_positive)]
+_LogScatter = Annotated[NumberDistribution, AfterValidator(log_scatter)]
 _Current = Annotated[CurrentDistribution, AfterValidator(only_positive)]
 
 
@@ -95,11 +109,11 @@ class Corrosion(Process):
     )
 
     onset: _Years = Field(description="zone median of the local onset, years after construction")
-    onset_scatter: _Number = Field(
+    onset_scatter: _LogScatter = Field(
         description="standard deviation of ln(local onset) from place to place"
     )
     current: _Current = Field(description="zone median of the local current density")
-    current_scatter: _Number = Field(
+    current_scatter: _LogScatter = Field(
         description="standard deviation of ln(local current density) from place to place"
     )
     attack: Literal["pitting", "uniform"] = Field(description="how the bars lose section")
@@ -130,13 +144,13 @@ class Chloride(Process):
         description="zone median of the local surface content, mass fraction of binder (such as "
         "2.5 %)"
     )
-    surface_chloride_scatter: _Number = Field(
+    surface_chloride_scatter: _LogScatter = Field(
         description="standard deviation of ln(local surface content) from place to place"
     )
     diffusion: Annotated[DiffusionDistribution, AfterValidator(only_positive)] = Field(
         description="zone median of the local apparent diffusion coefficient at the reference age"
     )
-    diffusion_scatter: _Number = Field(
+    diffusion_scatter: _LogScatter = Field(
         description="standard deviation of ln(local diffusion coefficient) from place to place"
     )
     age_exponent: Annotated[NumberDistribution, AfterValidator(within_one)] = Field(
@@ -168,7 +182,7 @@ class Carbonation(Process):
     carbonation_rate: Annotated[RootTimeDistribution, AfterValidator(only_positive)] = Field(
         description="zone median of the local rate, depth over the root of age"
     )
-    carbonation_rate_scatter: _Number = Field(
+    carbonation_rate_scatter: _LogScatter = Field(
         description="standard deviation of ln(local rate) from place to place"
     )
 

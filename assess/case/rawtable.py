@@ -91,16 +91,20 @@ def _bytes(path: Path) -> bytes:
     return raw
 
 
+def _eight_bit(raw: bytes) -> str:
+    """Decode as UTF-8, else as spreadsheets export under Windows, else as Latin-1."""
+    for encoding in ("utf-8-sig", "cp1252"):
+        try:
+            return raw.decode(encoding)
+        except UnicodeDecodeError:
+            continue
+    return raw.decode("latin-1")
+
+
 def _text(raw: bytes) -> str:
     """Decode, telling text from other files by the control characters that text has not."""
     try:
-        if raw.startswith(_UTF_16):
-            text = raw.decode("utf-16")
-        else:
-            try:
-                text = raw.decode("utf-8-sig")
-            except UnicodeDecodeError:
-                text = raw.decode("latin-1")
+        text = raw.decode("utf-16") if raw.startswith(_UTF_16) else _eight_bit(raw)
     except UnicodeDecodeError:
         raise _Unreadable("the file is not text", mend="save it as CSV in UTF-8") from None
     odd = re.search(r"[\x00-\x08\x0e-\x1f\x7f-\x9f]", text)

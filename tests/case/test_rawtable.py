@@ -39,6 +39,12 @@ def test_dialects(tmp_path: Path, content: str | bytes) -> None:
     assert table.rows == ROWS
 
 
+def test_windows_1252(tmp_path: Path) -> None:
+    note = "\u201cwet\u201d \u2013 3 \u20ac"
+    raw = f"location;note;current [µA/cm²]\nA1;{note};0,5\n".encode("cp1252")
+    assert rows_of(tmp_path, raw).rows == [["A1", note, "0,5"]]
+
+
 def test_latin_1(tmp_path: Path) -> None:
     raw = "location;note;current [µA/cm²]\nA1;Brücke;0,5\n".encode("latin-1")
     table = rows_of(tmp_path, raw)
