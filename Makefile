@@ -12,7 +12,7 @@ demo: $(READY)
 	$(BIN)/assess run $(CASE)
 
 test: $(READY)
-	$(BIN)/pytest
+	$(BIN)/pytest -n 2
 
 verify: $(READY)
 	$(BIN)/python -m tests.verification
