@@ -2,7 +2,7 @@
 
 import sys
 import threading
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
 from pathlib import Path
 from types import TracebackType
 from typing import Self
@@ -76,10 +76,11 @@ class RunScreen:
         table = Table(title=f"{record.title}: sections, nothing done", title_justify="left")
         surveyed = first != last
         indices = ("before", "after") if surveyed else ("index",)
-        headers = ("section", *indices, "5-95 %", "target", f"in {_last_year(kept)}", "verdict")
+        headers = ("section", *indices, "5-95 %", "target", "verdict")
         for header in headers:
             side: JustifyMethod = "left" if header in {"section", "verdict"} else "right"
-            table.add_column(header, justify=side)
+            # Names are folded where there is no room: a shortened one may be another's.
+            table.add_column(header, justify=side, overflow="fold", no_wrap=side == "right")
         for item in kept:
             before = record.result(item.section, first) if surveyed else None
             table.add_row(*_row(item, before, wanted.index))
@@ -107,10 +108,6 @@ def _years(count: int) -> str:
     return "one year" if count == 1 else f"{count} years"
 
 
-def _last_year(results: Sequence[SectionResult]) -> int:
-    return int(results[0].reference.year[-1])
-
-
 def _row(item: SectionResult, before: SectionResult | None, target: float) -> list[str]:
     curve = item.reference
     verdict = item.verdict
@@ -128,7 +125,6 @@ def _row(item: SectionResult, before: SectionResult | None, target: float) -> li
         ),
         f"{curve.low[0]:.2f} to {curve.high[0]:.2f}",
         f"{target:.2f}",
-        f"{curve.index[-1]:.2f}",
         words,
     ]
 
