@@ -110,8 +110,7 @@ def correction(
         np.asarray(moisture, dtype=np.str_),
     )
     ratio = lengths / diameters
-    _within("core diameter [mm]", diameters, DIAMETER_RANGE)
-    _within("core length over diameter", ratio, RATIO_RANGE)
+    require_shape(diameters, ratio, DIAMETER_RANGE, RATIO_RANGE)
     lack = (2.0 - np.minimum(ratio, 2.0)) ** 2
     coefficient = _by_moisture(moistures, _LENGTH_COEFFICIENT)
     length_factor = 1.0 - (coefficient - _STRENGTH_COEFFICIENT * strengths) * lack
@@ -136,10 +135,25 @@ def _by_moisture(moistures: NDArray[np.str_], table: dict[str, float]) -> FloatA
     return result
 
 
-def _within(name: str, value: FloatArray, limits: tuple[float, float]) -> None:
-    low, high = limits
-    outside = (value < low) | (value > high)
-    if np.any(outside):
-        raise ValueError(
-            f"{name} must be from {low:g} to {high:g}, got {value[outside].flat[0]:.4g}"
-        )
+def require_shape(
+    diameter: FloatArray,
+    ratio: FloatArray,
+    diameters: tuple[float, float],
+    ratios: tuple[float, float],
+) -> None:
+    """Refuse cores whose diameter, or length over diameter, is outside a rule's range.
+
+    Raises
+    ------
+    ValueError
+        With the first value outside.
+    """
+    for name, value, (low, high) in (
+        ("core diameter [mm]", diameter, diameters),
+        ("core length over diameter", ratio, ratios),
+    ):
+        outside = (value < low) | (value > high)
+        if np.any(outside):
+            raise ValueError(
+                f"{name} must be from {low:g} to {high:g}, got {value[outside].flat[0]:.4g}"
+            )

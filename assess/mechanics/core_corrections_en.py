@@ -5,6 +5,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from assess.mechanics.core_corrections import require_shape
+
 FloatArray = NDArray[np.float64]
 
 SHORT_CORE_FACTOR = 0.82  # EN 13791:2019, core of l/d = 1 to one of l/d = 2; from memory
@@ -69,15 +71,7 @@ def length_correction_en(diameter: ArrayLike, length: ArrayLike) -> LengthCorrec
         np.asarray(diameter, dtype=np.float64), np.asarray(length, dtype=np.float64)
     )
     ratio = lengths / diameters
-    for name, value, (low, high) in (
-        ("core diameter [mm]", diameters, DIAMETER_RANGE_EN),
-        ("core length over diameter", ratio, RATIO_RANGE_EN),
-    ):
-        outside = (value < low) | (value > high)
-        if np.any(outside):
-            raise ValueError(
-                f"{name} must be from {low:g} to {high:g}, got {value[outside].flat[0]:.4g}"
-            )
+    require_shape(diameters, ratio, DIAMETER_RANGE_EN, RATIO_RANGE_EN)
     held = np.clip(ratio, 1.0, 2.0)
     shape = 2.0 / (1.5 + 1.0 / held)
     scaled = 1.0 - (1.0 - shape) * (1.0 - SHORT_CORE_FACTOR) / (1.0 - 0.8)

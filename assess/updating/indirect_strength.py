@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from pydantic import AfterValidator, Field
 
 from assess.case.distributions import Distribution, NumberDistribution, distribution_of
-from assess.case.forms import Closed, EvidenceEntry
+from assess.case.forms import Closed, Column, EvidenceEntry
 from assess.case.processes import only_positive
 from assess.case.quantities import InUnit
 from assess.case.reader import Case, Evidence
@@ -31,6 +31,9 @@ from assess.updating.strength_places import StrengthRows
 from assess.updating.variables import Variable
 
 EN_13791 = "EN 13791"
+READINGS = Column(
+    "readings", "single readings behind the row", "-", required=False, above=0.0, below=1000.0
+)
 PositiveNumberDistribution = Annotated[NumberDistribution, AfterValidator(only_positive)]
 ReadingCount = Annotated[float, InUnit("-", "a number of readings", at_least=1.0)]
 

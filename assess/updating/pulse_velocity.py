@@ -15,6 +15,7 @@ from assess.mechanics.indirect_strength import VELOCITY_RANGE
 from assess.updating.indirect_faults import beyond_curve
 from assess.updating.indirect_strength import (
     EN_13791,
+    READINGS,
     IndirectEntry,
     IndirectStrength,
     ReadingCount,
@@ -81,15 +82,12 @@ class PulseVelocity(IndirectStrength):
                 below=8.0,
                 usual=(3.0, 5.5),
             ),
-            Column(
-                "readings", "single readings behind the row", "-", required=False,
-                above=0.0, below=1000.0,
-            ),
+            READINGS,
         ),
         value="pulse velocity",
         log_scale=True,
         doubts=_doubts,
-    )  # fmt: skip
+    )
     unit = "km/s"
     symbol = "v"
     assumption = (

@@ -13,6 +13,7 @@ from assess.mechanics.indirect_strength import REBOUND_RANGE
 from assess.updating.indirect_faults import beyond_curve
 from assess.updating.indirect_strength import (
     EN_13791,
+    READINGS,
     IndirectEntry,
     IndirectStrength,
     PositiveNumberDistribution,
@@ -73,15 +74,12 @@ class Rebound(IndirectStrength):
                 below=100.0,
                 usual=(20.0, 60.0),
             ),
-            Column(
-                "readings", "single readings behind the row", "-", required=False,
-                above=0.0, below=1000.0,
-            ),
+            READINGS,
         ),
         value="rebound number",
         log_scale=True,
         doubts=_doubts,
-    )  # fmt: skip
+    )
     unit = "-"
     symbol = "R"
     assumption = (
