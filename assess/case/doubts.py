@@ -1,7 +1,7 @@
 """What makes a survey table doubtful though it can be read: units, repetition, outliers."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -17,7 +17,7 @@ from assess.case.forms import (
 from assess.errors import Fault
 
 SHOWN = 5  # doubts of one sort that are listed singly
-FEWEST_FOR_OUTLIERS = 8
+FEWEST_FOR_OUTLIERS = 8  # and for the median of a column
 LARGEST_SCORE = 3.5  # Iglewicz & Hoaglin 1993
 
 
@@ -152,7 +152,23 @@ def unusual(table: Table, written: Written) -> list[Fault]:
         what = f"{about} is out of the usual range"
         line = int(table.lines[row])
         doubts.append(Fault(str(table.path), line, what, written.show(value), allowed, mend))
-    return capped(doubts, f"values of {about} out of the usual range")
+    return capped(doubts, f"values of {about} out of the usual range") + _odd_median(table, written)
+
+
+def _odd_median(table: Table, written: Written) -> list[Fault]:
+    """Doubt a whole column whose median is hardly ever met, though each of its values may be."""
+    typical, known = written.column.typical, written.values[np.isfinite(written.values)]
+    if typical is None or len(known) < FEWEST_FOR_OUTLIERS:
+        return []
+    median = float(np.median(known))
+    if typical[0] <= median <= typical[1]:
+        return []
+    looks = other_units(replace(written, column=replace(written.column, usual=typical)), median)
+    mend = f"written in {looks}?" if looks else ""
+    what = f"the median of column {written.column.name!r} is out of the usual range"
+    allowed = f"usually {written.show_range(*typical)}"
+    given = written.show(median)
+    return [Fault(str(table.path), int(table.lines[0]), what, given, allowed, mend)]
 
 
 def _article(unit: str) -> str:

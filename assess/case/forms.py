@@ -100,6 +100,7 @@ class Column:
     above: float | None = None  # allowed: value > above
     below: float | None = None  # allowed: value < below
     usual: tuple[float, float] | None = None  # outside: a doubt (another unit?)
+    typical: tuple[float, float] | None = None  # of the median of a table; outside: a doubt
     choices: tuple[str, ...] = ()  # for text columns
     censored: bool = False  # may say ">80": at least that much
     below_detection: bool = False  # may say "<0.01": less than that

@@ -109,15 +109,15 @@ def read_case(path: Path, vocabulary: Vocabulary, today: date | None = None) -> 
         is at fault.
     """
     path = Path(path)
-    document, faults = read_yaml(path)
+    document, misread = read_yaml(path)
     if document is None:
-        return CaseReading(None, tuple(sorted(faults)), ())
+        return CaseReading(None, tuple(sorted(misread)), ())
     document = spread_defaults(document, vocabulary)
     spec, faults = _validated(document, vocabulary)
     wrong, doubts = checks.cross_check(document, vocabulary, today or date.today())
     tables = _Tables(path, document, vocabulary)
     tables.read()
-    faults += wrong + tables.faults
+    faults += misread + wrong + tables.faults
     doubts += tables.doubts
     readable = None
     if spec is not None:

@@ -164,7 +164,8 @@ def read_yaml(path: Path) -> tuple[Document | None, list[Fault]]:
     document : Document or None
         None if the file cannot be read at all.
     faults : list of Fault
-        Everything wrong with the file as YAML; empty if `document` may be used.
+        Everything wrong with the file as YAML; what else is wrong with a document that was
+        read all the same may be looked for, but it is not to be used.
     """
     file = str(path)
     text, fault = _read_text(path)
@@ -180,14 +181,12 @@ def read_yaml(path: Path) -> tuple[Document | None, list[Fault]]:
         ]
     except RecursionError:
         return None, [Fault(file, 0, "keys are nested too deep to be read")]
-    if tree.faults:
-        return None, tree.faults
     if not isinstance(data, dict):
         given = "a list" if isinstance(data, list) else repr(data)[:40]
         given = "nothing" if data is None else given
         mend = "begin with keys such as structure:, zones:, members:"
         return None, [Fault(file, 1, "a case file is a mapping of keys", given=given, mend=mend)]
-    return Document(file, data, tree.lines, bare=frozenset(tree.bare)), []
+    return Document(file, data, tree.lines, bare=frozenset(tree.bare)), tree.faults
 
 
 def _read_text(path: Path) -> tuple[str | None, Fault | None]:
@@ -293,7 +292,7 @@ class _Tree:
         return values
 
     def _own(self, node: yaml.MappingNode) -> list[tuple[Hashable, tuple[yaml.Node, yaml.Node]]]:
-        """List the pairs written in a mapping, refusing any key that stands twice."""
+        """List the pairs of a mapping; a key that stands twice is a fault and counts once."""
         seen: dict[Hashable, int] = {}
         pairs: list[tuple[Hashable, tuple[yaml.Node, yaml.Node]]] = []
         for key_node, value_node in node.value:
@@ -303,7 +302,8 @@ class _Tree:
             if key in seen:
                 what = f"key {key!r} stands twice, first in line {seen[key]}"
                 self.faults.append(Fault(self.file, line, what, mend="keep one of the two"))
-            seen.setdefault(key, line)
+                continue  # the first one stands, so that the rest can be looked at
+            seen[key] = line
             pairs.append((key, (key_node, value_node)))
         return pairs
 

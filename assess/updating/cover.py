@@ -109,6 +109,7 @@ class Cover(EvidenceKind):
                 above=0.0,
                 below=400.0,
                 usual=(3.0, 150.0),
+                typical=(10.0, 120.0),
                 censored=True,
             ),
             Column(

@@ -13,6 +13,7 @@ from assess.case.forms import EvidenceEntry, EvidenceForm, Table, Vocabulary
 from assess.case.reader import CaseReading, load_case, read_case
 from assess.case.spec import GradedConcrete, MeasuredConcrete, NominalCover, ScatteredCover
 from assess.errors import CaseError, Fault
+from assess.vocabulary import vocabulary
 from tests.verification import cases
 
 Read = Callable[..., CaseReading]
@@ -569,3 +570,17 @@ def test_surveys_of_one_date_lead_to_one_state(make_case):
     assert [item.survey for item in case.evidence] == [
         "2014-03-01", "scan and second scan", "scan and second scan", "scan and second scan",
     ]  # fmt: skip
+
+
+def test_a_key_that_stands_twice_hides_no_other_fault(tmp_path):
+    case = cases.base()
+    case["structure"]["horizon"] = -5
+    path = cases.write_case(tmp_path, case)
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text + "steel: {}\n", encoding="utf-8")
+    reading = read_case(path, vocabulary())
+    said = [str(fault) for fault in reading.faults]
+    assert reading.case is None
+    assert any("key 'steel' stands twice" in one for one in said)
+    assert any("horizon" in one and "given -5" in one for one in said)
+    assert len(said) == 2

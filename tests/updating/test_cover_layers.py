@@ -4,8 +4,10 @@ import numpy as np
 import pytest
 from scipy import stats
 
+from assess.case.reader import read_case
 from assess.updating.kinds import KINDS
 from assess.updating.model import specify
+from assess.vocabulary import vocabulary
 from tests.updating.graphs import graph, numbers
 from tests.verification import cases
 
@@ -97,3 +99,15 @@ def test_the_graph_agrees(make):
     value, gradient = graph(COVER, rows, prior, 1)(at)
     assert value == pytest.approx(numbers(COVER, rows, prior, 1, at))
     assert np.all(np.isfinite(gradient))
+
+
+def test_readings_in_centimetres_are_doubted_though_each_may_be(make_case):
+    # 5.5 mm is a cover that is met; a median of it is not.
+    table = "cover [mm]\n" + "".join(f"{4.6 + 0.2 * k:.1f}\n" for k in range(10))
+    entry = {"table": "cover.csv", "zone": "deck", "meter": METER}
+    case = cases.base(surveys=[{"date": "2020-01-01", "cover": entry}])
+    path = make_case(case, {"cover.csv": table}).path
+    (doubt,) = [d for d in read_case(path, vocabulary()).doubts if "median" in str(d)]
+    assert doubt.line == 2
+    assert "given 5.5 mm" in str(doubt)
+    assert "written in cm" in str(doubt)
